@@ -1,0 +1,186 @@
+"""Is the network or mesh sound, and what can be checked with it?"""
+
+import json
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from dec.arrays import IntArray
+from dec.calculus.complex import Complex
+from dec.calculus.dataset import Dataset
+from dec.errors import InputError
+from dec.findings import Finding
+from dec.geometry.shape import check_shape
+from dec.topology.graphs import bridges
+
+__all__ = ["Condition", "check"]
+
+SCHEMA = "dec.check/1"
+_NAMED = 5
+_CELLS = ("vertices", "edges", "faces", "cells")
+
+
+@dataclass(frozen=True, eq=False)
+class Condition:
+    """The result of `check`.
+
+    Attributes
+    ----------
+    data : Dataset
+    findings : tuple of Finding
+        Statements that hold for a sound complex.
+    facts : mapping of str to str
+        What can be checked with it, in words; facts are no faults.
+    """
+
+    data: Dataset
+    findings: tuple[Finding, ...]
+    facts: Mapping[str, str] = field(default_factory=dict)
+
+    @property
+    def holds(self) -> bool:
+        """Whether every finding holds."""
+        return all(f.holds for f in self.findings)
+
+    def to_dict(self) -> dict[str, Any]:
+        """The condition as plain Python objects, keys as in the JSON."""
+        K = self.data.complex
+        return {
+            "schema": SCHEMA,
+            "holds": self.holds,
+            "inputs": [{"name": i.name, "sha256": i.sha256, "bytes": i.bytes} for i in self.data.inputs],
+            "counts": dict(zip(_CELLS, K.counts, strict=False)),
+            "dim": K.dim,
+            "euler": K.euler,
+            "betti": list(K.betti()),
+            "torsion": None if K.dim > 1 else [[] for _ in K.counts],
+            "components": K.n_components,
+            "manifold": K.is_manifold,
+            "orientable": K.is_orientable,
+            "boundary_loops": len(K.boundary_loops()) if K.dim == 2 else None,
+            "findings": [
+                {
+                    "name": f.name, "holds": f.holds, "measured": _plain(f.measured), "allowed": _plain(f.allowed),
+                    "where": _plain(f.where),
+                }
+                for f in self.findings
+            ],
+            "facts": dict(self.facts),
+            "notes": list(self.data.notes),
+        }  # fmt: skip
+
+    def to_json(self, *, indent: int | None = None) -> str:
+        """The condition as JSON text: the same input gives the same bytes."""
+        return json.dumps(self.to_dict(), indent=indent, ensure_ascii=False, allow_nan=False)
+
+    def __repr__(self) -> str:
+        failed = [f.name for f in self.findings if not f.holds]
+        return f"<Condition: {'sound' if not failed else 'not: ' + '; '.join(failed)}>"
+
+
+def check(data: Dataset | Complex) -> Condition:
+    """Whether a network or mesh is sound, and what can be checked with it.
+
+    Parameters
+    ----------
+    data : Dataset or Complex
+
+    Returns
+    -------
+    Condition
+        Its findings are those of `Complex.check`, and where there are coordinates of the shapes of the cells. Nothing
+        is repaired.
+
+    Raises
+    ------
+    InputError
+        If `data` is neither.
+
+    Examples
+    --------
+    >>> check(Complex.from_edges([0, 1, 2], [1, 2, 0])).facts["loops"]
+    '1 independent loop; every edge lies on a loop'
+    """
+    if isinstance(data, Complex):
+        data = Dataset(data)
+    if not isinstance(data, Dataset):
+        message = f"data must be a Dataset or a Complex, got {type(data).__name__}"
+        raise InputError(message)
+    K = data.complex
+    findings = list(K.check())
+    if K.points is not None and K.dim > 1:
+        findings += check_shape(K)
+    facts = _network_facts(data) if K.dim < 2 else _mesh_facts(data)
+    return Condition(data, tuple(findings), facts)
+
+
+def _network_facts(data: Dataset) -> dict[str, str]:
+    K = data.complex
+    alone = np.flatnonzero(bridges(K.tail, K.head, K.counts[0]))
+    loops = K.counts[1] - K.counts[0] + K.n_components
+    checked = f"{len(alone)} edges on no loop ({_some(K, alone)})" if len(alone) else "every edge lies on a loop"
+    facts = {"loops": f"{loops} independent loop{'' if loops == 1 else 's'}; {checked}"}
+    ends = np.sort(np.stack([K.tail, K.head], axis=1), axis=1)
+    proper = ends[ends[:, 0] != ends[:, 1]]
+    parallel = len(proper) - len(np.unique(proper, axis=0))
+    if parallel:
+        facts["parallel"] = f"{parallel} edges beside another edge of the same two vertices"
+    same = np.flatnonzero(K.tail == K.head)
+    if len(same):
+        facts["self"] = f"{len(same)} edges start and end at one vertex ({_some(K, same)})"
+    for degree, what in ((1, "edges"), (0, "vertices")):
+        described = [
+            _column_fact(column) for name, column in data.columns.get(degree, {}).items() if name not in _STRUCTURE
+        ]
+        if described:
+            facts["columns" if degree else "at nodes"] = f"on {what}: " + ", ".join(described)
+    return facts
+
+
+_STRUCTURE = frozenset({"id", "from", "to", "x", "y", "z"})
+
+
+def _column_fact(column: Any) -> str:
+    present = int(column.present().sum())
+    try:
+        column.numbers()
+    except InputError:
+        return f"{column.name} (text)"
+    return f"{column.name} ({present} of {len(column.cells)})"
+
+
+def _mesh_facts(data: Dataset) -> dict[str, str]:
+    K = data.complex
+    facts = {}
+    if K.points is not None and len(K.points):
+        size = " x ".join(f"{extent:.6g}" for extent in np.ptp(K.points, axis=0))
+        facts["box"] = f"{size} (unit of the file)"
+    uses = K.incidences.uses
+    facts["open"] = f"{int((uses == 1).sum()):,} {_CELLS[K.dim - 1]} with one {'face' if K.dim == 2 else 'cell'} only"
+    turn = K.turning_proposal()
+    if len(turn):
+        first = ", ".join(map(str, turn[:_NAMED])) + (", ..." if len(turn) > _NAMED else "")
+        facts["to turn"] = f"{len(turn):,} would have to be turned to agree ({first})"
+    if data.fields:
+        facts["fields"] = ", ".join(f"{name} ({' and '.join(places)})" for name, places in data.fields.items())
+    if data.regions:
+        facts["regions"] = ", ".join(f"{r.name} ({len(r.cells)} {_CELLS[r.degree]})" for r in data.regions.values())
+    return facts
+
+
+def _some(K: Complex, edges: IntArray) -> str:
+    names = [str(e if K.edge_ids is None else K.edge_ids[e]) for e in edges[:_NAMED].tolist()]
+    return ", ".join(names) + (", ..." if len(edges) > _NAMED else "")
+
+
+def _plain(value: Any) -> Any:
+    if isinstance(value, np.generic):
+        value = value.item()
+    if isinstance(value, Fraction):
+        return str(value)
+    if isinstance(value, Sequence) and not isinstance(value, str):
+        return [_plain(item) for item in value]
+    return value if isinstance(value, bool | int | float | str) or value is None else str(value)

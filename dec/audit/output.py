@@ -1,0 +1,83 @@
+"""The adjusted values of an audit as a file: a table for a network, a mesh with results for a mesh."""
+
+from pathlib import PurePath
+
+import numpy as np
+
+from dec.arrays import AnyArray, FloatArray
+from dec.audit.record import Audit
+from dec.calculus.dataset import Field
+from dec.errors import InputError
+from dec.files.tables_out import csv_bytes
+from dec.files.vtu import vtu_bytes
+
+__all__ = ["result_bytes"]
+
+
+def result_bytes(audit: Audit, name: str) -> bytes:
+    """The results of an audit as the bytes of a file.
+
+    Parameters
+    ----------
+    audit : Audit
+    name : str
+        The file's name; its suffix says what is made: ``.csv`` a table of the edges of a network, where the adjusted
+        values stand in a column of their own and the raw ones stay as read; ``.vtu`` the mesh with its fields and one
+        value and limit a cell.
+
+    Returns
+    -------
+    bytes
+
+    Raises
+    ------
+    InputError
+        If the suffix does not fit the audit.
+    """
+    suffix = PurePath(name).suffix.lower()
+    on_network = "edges" in audit.tables
+    if on_network and suffix == ".csv":
+        return csv_bytes(_edge_columns(audit))
+    if not on_network and suffix == ".vtu":
+        return vtu_bytes(audit.data, [*_given_fields(audit), *_cell_fields(audit)])
+    fitting = ".csv (a table)" if on_network else ".vtu (a mesh)"
+    message = f"-o {name}: the result of this audit must be written as {fitting}"
+    raise InputError(message)
+
+
+def _edge_columns(audit: Audit) -> dict[str, AnyArray]:
+    table = audit.tables["edges"]
+    value = str(audit.asked["value"])
+    raw = audit.data.column(value, 1)
+    columns: dict[str, AnyArray] = {key: table[key] for key in ("id", "from", "to")}
+    columns[value] = raw.cells if raw.cells.dtype == object and raw.decimal == "." else table["value"]
+    for key in ("sd", "adjusted", "adjusted_sd", "correction", "redundancy", "statistic", "detectable", "standing"):
+        columns[key if key not in columns else f"audit_{key}"] = table[key]
+    return columns
+
+
+def _given_fields(audit: Audit) -> list[Field]:
+    return [field for places in audit.data.fields.values() for field in places.values()]
+
+
+def _cell_fields(audit: Audit) -> list[Field]:
+    name = "circulation" if audit.law == "loop" else "net_outflow"
+    taken = {(f.name, f.at) for f in _given_fields(audit)}
+    fields = []
+    for key, part in (("value", name), ("limit", f"{name}_limit")):
+        values = _by_cell(audit, key)
+        if values is not None:
+            label = part if (part, "cells") not in taken else f"audit_{part}"
+            fields.append(Field(label, "cells", values))
+    return fields
+
+
+def _by_cell(audit: Audit, key: str) -> FloatArray | None:
+    """Return the column of the top cells in their own order, or None where the audit has no row for each."""
+    table = audit.tables.get("cells" if audit.data.complex.dim == 3 else "faces")
+    count = audit.data.complex.counts[-1]
+    if table is None or len(table["id"]) != count:
+        return None
+    values = np.empty(count)
+    values[np.asarray(table["id"], dtype=np.int64)] = np.asarray(table[key], dtype=np.float64)
+    return values.reshape(-1, 1)
