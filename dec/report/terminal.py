@@ -1,0 +1,210 @@
+"""A result as text for a terminal: rich renderables made from its JSON object, nothing read, nothing printed."""
+
+from collections.abc import Iterator, Mapping, Sequence
+from typing import Any
+
+from rich import box
+from rich.console import RenderableType
+from rich.padding import Padding
+from rich.table import Table
+from rich.text import Text
+
+from dec.report.wording import checked_sentence, number, suspect_sentences, verdict_sentence, visible
+
+__all__ = ["audit_view", "check_view"]
+
+_ROWS = 8
+_AXES = ("x", "y", "z")
+_MARK = {True: "holds", False: "FAILS", None: "open"}
+_STYLE = {True: "bold green", False: "bold red", None: "bold yellow"}
+
+
+def audit_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
+    """An audit for reading: verdict, first suspect and what was not checked, then the worst rows.
+
+    Parameters
+    ----------
+    result : mapping
+        The object that ``Audit.to_dict`` returns.
+
+    Yields
+    ------
+    rich renderables
+        Fit for 80 columns. Text of the caller's is never taken as markup.
+    """
+    yield _heading(result, "balance" if result["law"] == "balance" else "loops", result["holds"])
+    yield _item("verdict", verdict_sentence(result))
+    for place, line in enumerate(suspect_sentences(result)):
+        yield _item("suspect" if not place else "", line)
+    if checked_sentence(result):
+        yield _item("checked", checked_sentence(result))
+    for place, statement in enumerate(result.get("whole") or ()):
+        says = "exactly" if statement["holds"] else f"NOT: {statement['left']} against {statement['right']}"
+        yield _item("exactly" if not place else "", f"{visible(statement['name'])}: {says}")
+    yield Text("")
+    yield from _tables(result)
+    yield from _remarks("note", result["notes"])
+    yield from _remarks("not shown", result["not_shown"])
+
+
+def check_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
+    """A soundness check for reading: what it is, then each statement and whether it holds."""
+    failed = sum(not f["holds"] for f in result["findings"])
+    yield _heading(result, "check", not failed)
+    yield _item("cells", ", ".join(f"{n:,} {name}" for name, n in result["counts"].items()))
+    betti = ", ".join(f"b{k} = {n}" for k, n in enumerate(result["betti"]))
+    yield _item(
+        "shape", f"{_plural(result['components'], 'component')}, Euler characteristic {result['euler']}, {betti}"
+    )
+    if result["dim"] > 1:
+        yield _item("surface" if result["dim"] == 2 else "solid", _kind(result))
+    for name, text in result["facts"].items():
+        yield _item(name, text)
+    table = _table(("", "left"), ("statement", "left"), ("against", "right"), ("where", "left"))
+    for finding in result["findings"]:
+        mark = Text(_MARK[finding["holds"]], _STYLE[finding["holds"]])
+        against = "" if finding["holds"] else number(finding["measured"])
+        table.add_row(mark, visible(finding["name"]), against, _places(finding["where"]))
+    yield table
+    yield from _remarks("note", result["notes"])
+
+
+def _heading(result: Mapping[str, Any], what: str, holds: bool | None) -> RenderableType:
+    names = ", ".join(visible(i["name"]) for i in result["inputs"]) or "data from memory"
+    asked = result.get("asked", {})
+    of = visible(asked.get("value") or asked.get("field") or "")
+    unit = f" [{visible(asked['unit'])}]" if asked.get("unit") else ""
+    line = Text(f"{what}{' of ' + of if of else ''}{unit}: {names}  ")
+    word = {True: "HOLDS", False: "DOES NOT HOLD", None: "NOT DECIDED" if result.get("dof") else "CANNOT BE CHECKED"}[
+        holds
+    ]
+    if what == "check":
+        word = "SOUND" if holds else "NOT SOUND"
+    return line.append(word, _STYLE[holds])
+
+
+def _tables(result: Mapping[str, Any]) -> Iterator[RenderableType]:
+    if result["suspects"]:
+        yield from _suspects(result)
+    if result["law"] == "balance" and "vertices" in result:
+        rows = [v for v in result["vertices"] if v["residual"] is not None]
+        rows.sort(key=lambda v: -(v["statistic"] if v["statistic"] is not None else abs(v["residual"])))
+        yield from _worst("vertices", "in - out + supply", rows, "residual")
+    elif "loops" in result:
+        yield from _loops(result)
+    for name in ("faces", "cells", "shells", "regions", "boundaries", "holes"):
+        if result.get(name):
+            yield from _worst_cells(name, result[name])
+
+
+def _suspects(result: Mapping[str, Any]) -> Iterator[RenderableType]:
+    edges = {e["id"]: e for e in result.get("edges", ())}
+    table = _table(
+        ("suspect", "left"), ("reads", "right"), ("adjusted", "right"), ("all else", "right"), ("times sd", "right"),
+        ("detectable", "right"), title="readings that stand out",
+    )  # fmt: skip
+    for suspect in result["suspects"][:_ROWS]:
+        edge = edges.get(suspect["id"], {})
+        table.add_row(
+            visible(suspect["id"]), number(edge.get("value")), number(edge.get("adjusted")),
+            number(suspect["estimate"]), number(suspect["statistic"], 3), number(edge.get("detectable"), 3),
+        )  # fmt: skip
+    yield table
+    yield from _more(len(result["suspects"]))
+
+
+def _worst(title: str, heading: str, rows: Sequence[Mapping[str, Any]], key: str) -> Iterator[RenderableType]:
+    if not rows:
+        return
+    table = _table(
+        (title, "left"), (heading, "right"), ("sd", "right"), ("times sd", "right"), title=f"{title}, worst first"
+    )
+    for row in rows[:_ROWS]:
+        table.add_row(visible(row["id"]), number(row[key]), number(row["sd"], 3), number(row["statistic"], 3))
+    yield table
+    yield from _more(len(rows))
+
+
+def _loops(result: Mapping[str, Any]) -> Iterator[RenderableType]:
+    if not result["loops"]:
+        return
+    table = _table(
+        ("loop", "left"),
+        ("closes by", "right"),
+        ("allowed", "right"),
+        ("", "left"),
+        ("legs", "left"),
+        title="loops, worst first",
+    )
+    for loop in result["loops"][:_ROWS]:
+        legs = " ".join(f"{'+' if sign > 0 else '-'}{visible(name)}" for name, sign in loop["legs"][:6])
+        more = f" ... {len(loop['legs'])} legs" if len(loop["legs"]) > 6 else ""
+        mark = Text(_MARK[loop["holds"]], _STYLE[loop["holds"]])
+        table.add_row(visible(loop["id"]), number(loop["misclosure"]), number(loop["limit"], 4), mark, legs + more)
+    yield table
+    yield from _more(len(result["loops"]))
+
+
+def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]]) -> Iterator[RenderableType]:
+    table = _table(
+        (name, "left"),
+        ("value", "right"),
+        ("limit", "right"),
+        ("", "left"),
+        ("at", "left"),
+        title=f"{name}, worst first",
+    )
+    size = max((abs(row[axis]) for row in rows for axis in _AXES if row.get(axis) is not None), default=0.0)
+    for row in rows[:_ROWS]:
+        places = (row[axis] for axis in _AXES if row.get(axis) is not None)
+        place = ", ".join(number(p if abs(p) > 1e-12 * size else 0.0, 4) for p in places)
+        mark = Text(_MARK[row["holds"]], _STYLE[row["holds"]])
+        table.add_row(visible(row["id"]), number(row["value"]), number(row["limit"], 3), mark, place)
+    yield table
+    yield from _more(len(rows))
+
+
+def _kind(result: Mapping[str, Any]) -> str:
+    manifold = "manifold" if result["manifold"] else "not a manifold"
+    sides = {True: "orientable", False: "not orientable", None: "orientation not defined"}[result["orientable"]]
+    loops = result["boundary_loops"]
+    edge = "closed" if loops == 0 else ("" if loops is None else _plural(loops, "boundary loop"))
+    return ", ".join(part for part in (manifold, sides, edge) if part)
+
+
+def _places(where: Sequence[Any]) -> str:
+    shown = [
+        " - ".join(visible(p) for p in place) if isinstance(place, list) else visible(place) for place in where[:4]
+    ]
+    return ", ".join(shown) + (", ..." if len(where) > 4 else "")
+
+
+def _remarks(name: str, texts: Sequence[str]) -> Iterator[RenderableType]:
+    for place, text in enumerate(texts):
+        yield _item(name if not place else "", visible(text))
+
+
+def _item(name: str, text: str) -> RenderableType:
+    grid = Table.grid(padding=(0, 1))
+    grid.add_column(width=9, style="bold")
+    grid.add_column(overflow="fold")
+    grid.add_row(Text(name), Text(text))
+    return Padding(grid, (0, 0, 0, 2))
+
+
+def _table(*columns: tuple[str, Any], title: str | None = None) -> Table:
+    table = Table(
+        box=box.SIMPLE_HEAD, title=None if title is None else Text(title), title_justify="left", pad_edge=False
+    )
+    for heading, justify in columns:
+        table.add_column(Text(heading), justify=justify, overflow="fold")
+    return table
+
+
+def _more(count: int) -> Iterator[RenderableType]:
+    if count > _ROWS:
+        yield Text(f"  {count - _ROWS:,} more in --json or -o FILE\n")
+
+
+def _plural(count: int, noun: str) -> str:
+    return f"{count:,} {noun}{'' if count == 1 else 's'}"

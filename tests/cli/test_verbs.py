@@ -1,0 +1,262 @@
+"""The verbs: what they print where, and how they exit."""
+
+import io
+import json
+import os
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+
+ENDS = ("--open", "S", "--open", "T", "--open", "U")
+
+
+def test_a_balance_within_limits_exits_0_and_says_so(run, junction):
+    code, out, err = run("balance", junction / "pipes.csv", "--value", "flow", "--sd", "sd", *ENDS)
+    assert (code, err) == (0, "")
+    assert "HOLDS" in out
+    assert "chi-square 0.333333" in out  # (5.2 - 3.0 - 2.1)^2 / (3 * 0.1^2), by hand
+
+
+def test_a_balance_outside_its_limit_exits_1(run, junction):
+    code, out, _ = run("balance", junction / "pipes.csv", "--value", "flow", "--sd", "0.01", *ENDS)
+    assert code == 1
+    assert "DOES NOT HOLD" in out
+
+
+def test_the_exact_decimals_decide_without_sd_or_limit(run, junction):
+    code, out, _ = run("balance", junction / "pipes.csv", "--value", "flow", *ENDS)
+    assert code == 1
+    (junction / "pipes.csv").write_text("id,from,to,flow\nin,S,J,0.3\na,J,T,0.1\nb,J,U,0.2\n")
+    code, out, _ = run("balance", junction / "pipes.csv", "--value", "flow", *ENDS)
+    assert code == 0
+    assert "exactly zero" in out
+
+
+def test_a_limit_is_met_when_every_residual_is_within_it(run, junction):
+    words = ("balance", junction / "pipes.csv", "--value", "flow", *ENDS)
+    assert run(*words, "--limit", "0.1")[0] == 0
+    assert run(*words, "--limit", "0.09")[0] == 1
+
+
+def test_nothing_to_check_exits_4(run, junction):
+    code, out, _ = run("balance", junction / "pipes.csv", "--value", "flow", "--sd", "0.1", "--open", "J", *ENDS)
+    assert code == 4
+    assert "Nothing can be checked" in out
+
+
+def test_a_closed_part_with_a_surplus_exits_4_and_names_it(run, junction):
+    (junction / "nodes.csv").write_text("id,supply\nS,5\nJ,0\nT,-3\nU,-1.75\n")
+    code, out, err = run(
+        "balance", junction / "pipes.csv", "--nodes", junction / "nodes.csv", "--value", "flow", "--supply", "supply"
+    )
+    assert (code, out) == (4, "")
+    assert "0.25" in err
+    assert "S, J, T" in err
+
+
+def test_open_vertices_come_from_ids_and_from_a_column_together(run, junction):
+    base = (
+        "balance",
+        junction / "pipes.csv",
+        "--nodes",
+        junction / "nodes.csv",
+        "--value",
+        "flow",
+        "--sd",
+        "sd",
+        "--json",
+    )
+    by_column = json.loads(run(*base, "--open-column", "open")[1])
+    both = json.loads(run(*base, "--open-column", "open", "--open", "S")[1])
+    assert by_column["asked"]["open"] == both["asked"]["open"] == ["S", "T", "U"]
+
+
+def test_json_alone_stands_on_standard_output(run, junction):
+    code, out, err = run("balance", junction / "pipes.csv", "--value", "flow", "--sd", "sd", *ENDS, "--json")
+    assert (code, err) == (0, "")
+    assert out.endswith("}\n")
+    assert out.count("\n") == 1
+    result = json.loads(out)
+    assert result["schema"] == "dec.audit/1"
+    assert result["inputs"][0]["name"] == "pipes.csv"
+    assert result["edges"][0]["id"] == "in"
+
+
+def test_loops_reads_a_fixed_column(run, tmp_path):
+    (tmp_path / "lines.csv").write_text("from,to,dh\nA,B,1.5\nB,C,2.5\n")
+    (tmp_path / "marks.csv").write_text("id,height\nA,10\nB,\nC,14.0\n")
+    words = ("loops", tmp_path / "lines.csv", "--nodes", tmp_path / "marks.csv", "--value", "dh")
+    code, out, _ = run(*words, "--fixed", "height", "--json")
+    assert code == 0
+    assert json.loads(out)["dof"] == 1
+    assert run(*words)[0] == 4  # without the heights there is no loop
+
+
+def test_check_describes_a_network(run, junction):
+    code, out, _ = run("check", junction / "pipes.csv", "--nodes", junction / "nodes.csv")
+    assert code == 0
+    assert "SOUND" in out
+    assert "4 vertices, 3 edges" in out
+    assert "3 edges on no loop" in out
+
+
+def test_check_finds_a_node_without_an_edge(run, junction):
+    (junction / "nodes.csv").write_text("id\nS\nJ\nT\nU\nlost\n")
+    code, out, _ = run("check", junction / "pipes.csv", "--nodes", junction / "nodes.csv", "--json")
+    failed = [f for f in json.loads(out)["findings"] if not f["holds"]]
+    assert code == 1
+    assert [(f["name"], f["where"]) for f in failed] == [("every vertex is used", ["lost"])]
+
+
+def test_quiet_prints_nothing_and_keeps_the_exit_code(run, junction):
+    assert run("balance", junction / "pipes.csv", "--value", "flow", "--sd", "0.01", *ENDS, "--quiet") == (1, "", "")
+
+
+def test_the_adjusted_table_keeps_the_raw_column(run, junction):
+    target = junction / "adjusted.csv"
+    assert run("balance", junction / "pipes.csv", "--value", "flow", "--sd", "sd", *ENDS, "-o", target)[0] == 0
+    lines = target.read_text().splitlines()
+    assert lines[0] == "id,from,to,flow,sd,adjusted,adjusted_sd,correction,redundancy,statistic,detectable,standing"
+    assert lines[1].startswith("in,S,J,5.2,0.1,5.16666666666666")
+
+
+def test_a_value_column_called_adjusted_keeps_its_name(run, junction):
+    (junction / "pipes.csv").write_text("from,to,adjusted\nS,J,1\nJ,T,1\n")
+    code, out, _ = run(
+        "balance", junction / "pipes.csv", "--value", "adjusted", "--open", "S", "--open", "T", "-o", "-"
+    )
+    assert code == 0
+    assert out.splitlines()[0].split(",")[3:6] == ["adjusted", "sd", "audit_adjusted"]
+
+
+def test_an_existing_output_is_replaced_only_with_force(run, junction):
+    target = junction / "adjusted.csv"
+    target.write_text("precious")
+    words = ("balance", junction / "pipes.csv", "--value", "flow", "--sd", "sd", *ENDS, "-o", target)
+    code, out, err = run(*words)
+    assert (code, out) == (5, "")
+    assert "--force" in err
+    assert target.read_text() == "precious"
+    assert run(*words, "--force")[0] == 0
+    assert target.read_text().startswith("id,")
+
+
+def test_an_output_that_does_not_fit_is_refused_before_anything_is_printed(run, junction):
+    code, out, err = run(
+        "balance", junction / "pipes.csv", "--value", "flow", "--sd", "sd", *ENDS, "-o", junction / "a.vtu"
+    )
+    assert (code, out) == (3, "")
+    assert ".csv" in err
+    assert not (junction / "a.vtu").exists()
+
+
+@pytest.mark.parametrize(
+    "words",
+    [
+        (), ("weigh",), ("balance",), ("balance", "f.csv"), ("balance", "f.csv", "--value", "a", "--field", "b"),
+        ("balance", "f.csv", "--value", "a", "--at", "cells"), ("loops", "f.vtu", "--field", "u", "--sd", "1"),
+        ("balance", "f.csv", "--value", "a", "--alpha", "much"), ("check", "f.csv", "--decimal", ";"),
+    ],
+)  # fmt: skip
+def test_wrong_use_exits_2_and_prints_nothing_on_standard_output(run, words):
+    code, out, err = run(*words)
+    assert (code, out) == (2, "")
+    assert err
+
+
+def test_an_error_is_json_too(run, tmp_path):
+    code, out, err = run("balance", tmp_path / "none.csv", "--value", "flow", "--json")
+    assert (code, err) == (3, "")
+    assert json.loads(out) == {
+        "schema": "dec.error/1",
+        "error": "InputError",
+        "message": json.loads(out)["message"],
+        "exit": 3,
+    }
+    code, out, _ = run("balance", "--json")
+    assert code == 2
+    assert json.loads(out)["error"] == "usage"
+
+
+def test_a_table_is_read_from_standard_input(run, monkeypatch):
+    class Standard:
+        buffer = io.BytesIO(b"from,to,dh\nA,B,1\nB,A,-1\n")
+
+    monkeypatch.setattr(sys, "stdin", Standard())
+    code, out, _ = run("loops", "-", "--value", "dh", "--json")
+    assert code == 0
+    assert json.loads(out)["inputs"][0]["bytes"] == 24
+
+
+def test_hostile_ids_cannot_steer_the_terminal(run, tmp_path):
+    (tmp_path / "e.csv").write_text("id,from,to,flow\n\x1b[31mred,[bold]S[/bold],J,1\n\u202eb,J,T,2\n")
+    code, out, _ = run("balance", tmp_path / "e.csv", "--value", "flow", "--sd", "0.1", "--open", "T")
+    assert code == 1
+    assert "\x1b" not in out
+    assert "\u202e" not in out
+    assert "[bold]S[/bold]" in out
+
+
+def test_output_fits_80_columns_when_piped(run, junction):
+    out = run("balance", junction / "pipes.csv", "--value", "flow", "--sd", "0.01", *ENDS)[1]
+    assert max(len(line) for line in out.splitlines()) <= 80
+    assert "\x1b" not in out
+
+
+def test_a_reader_that_leaves_early_is_no_error(junction):
+    words = [sys.executable, "-m", "dec", "balance", str(junction / "pipes.csv"), "--value", "flow", "--json"]
+    read, write = os.pipe()
+    os.close(read)
+    process = subprocess.run(words, stdout=write, stderr=subprocess.PIPE, check=False, timeout=120)
+    os.close(write)
+    assert process.stderr == b""
+
+
+def test_help_shows_an_example_for_every_verb(run):
+    for verb in ("check", "balance", "loops", "demo"):
+        code, out, _ = run(verb, "--help")
+        assert code == 0
+        assert f"dec {verb}" in out.split("example:")[1]
+        assert max(len(line) for line in out.splitlines()) <= 80
+
+
+def test_help_needs_no_numerical_library():
+    program = """if True:
+        import sys
+        from dec.cli import main
+        try:
+            main(["--help"])
+        except SystemExit:
+            print(sorted({"numpy", "scipy", "pandas", "rich", "numba", "meshio"} & set(sys.modules)))
+    """
+    done = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True)
+    assert done.stdout.splitlines()[-1] == "[]"
+
+
+def test_the_demo_finds_exactly_what_was_planted(run):
+    code, out, err = run("demo")
+    assert (code, err) == (0, "")
+    assert "P21" in out
+    assert "NO " not in out
+
+
+def test_the_demo_writes_its_files_once(run, tmp_path):
+    folder = tmp_path / "town"
+    assert run("demo", folder, "--quiet")[0] == 0
+    names = sorted(p.name for p in folder.iterdir())
+    assert names == ["adjusted.csv", "bracket.json", "bracket.vtu", "nodes.csv", "pipes.csv", "town.json"]
+    code, out, err = run("demo", folder)
+    assert (code, out) == (5, "")
+    assert "--force" in err
+
+
+def test_the_demo_data_are_those_of_the_examples():
+    import dec.demo
+
+    here = Path(dec.demo.__file__).parent / "data"
+    top = Path(__file__).parents[2]
+    assert (here / "pipes.csv").read_bytes() == (top / "examples/data/town/pipes.csv").read_bytes()
+    assert (here / "nodes.csv").read_bytes() == (top / "examples/data/town/nodes.csv").read_bytes()
+    assert (here / "bracket.vtu").read_bytes() == (top / "meshes/bracket.vtu").read_bytes()
