@@ -32,6 +32,11 @@ def adjust_differences(network: Complex, readings: Readings, fixed: Known | None
     Adjustment
         Potentials are measured from the fixed ones; in a part without any, its lowest vertex has 0.
 
+    Raises
+    ------
+    AccuracyError
+        If the standard deviations lie too far apart.
+
     Notes
     -----
     Minimises sum (D p - y)^2 / sd^2 over potentials p: (D^T W D) p = D^T W y, W = diag(1 / sd^2), on the measured

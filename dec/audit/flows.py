@@ -86,6 +86,8 @@ def adjust_flows(network: Complex, readings: Readings, supply: Known | None, ope
     ------
     UnsolvableError
         If a part without an open vertex has supplies that do not add up to zero; the message names it.
+    AccuracyError
+        If the standard deviations lie too far apart.
 
     Notes
     -----
@@ -188,9 +190,9 @@ def _add_inferred_spread(
     lone = bridges(tail, head, n_joined)  # nothing else crosses the cut, so the supplies alone give the flow
     spread[inferred & lone] = 0.0
     edges = np.flatnonzero(inferred & ~lone)
-    if len(edges) * n_joined > MOST_SPREAD_WORK:
+    if not 0 < len(edges) * n_joined <= MOST_SPREAD_WORK:
         return
-    forest = spanning_forest(tail, head, n_joined, roots=number[opened[:1]], usable=~measured)
+    forest = spanning_forest(tail, head, n_joined, usable=~measured)
     used, unchecked = np.flatnonzero(checked), np.flatnonzero(measured & ~checked)
     for block in np.split(edges, range(BLOCK, len(edges), BLOCK)):
         across = np.zeros((len(tail), len(block)))

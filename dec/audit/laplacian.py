@@ -16,8 +16,8 @@ __all__ = ["BLOCK", "LARGEST_FOR_ALL", "Laplacian"]
 
 # Figures of single edges take one solve a vertex: above this many vertices they are left out, and the audit says so.
 LARGEST_FOR_ALL = 5_000
-# Right-hand sides at once: few enough that the matrix library does not start threads for them.
-BLOCK = 16
+# Right-hand sides at once: so few that the matrix library starts no threads, ten times as dear on busy cores.
+BLOCK = 4
 # Conductances further apart than this lose too many digits in a difference of two entries of the inverse.
 _NARROW = 1e3
 # Further apart than this a sum of two conductances keeps hardly a digit of the smaller one.

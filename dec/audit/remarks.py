@@ -26,9 +26,8 @@ def self_loop_notes(network: Complex, *, balance: bool) -> list[str]:
     edges = np.flatnonzero(network.tail == network.head)
     if not len(edges):
         return []
-    rule = "never enter a balance" if balance else "must read zero"
-    which = counted(len(edges), "edge starts and ends", "edges start and end")
-    return [f"{which} at one vertex and {rule} ({few(edge_names(network, edges))})"]
+    which = f"{counted(len(edges), 'edge', 'edges')} with both ends at one vertex ({few(edge_names(network, edges))})"
+    return [f"{which}; {'no balance sees such an edge' if balance else 'such an edge must read zero'}"]
 
 
 def datum_notes(network: Complex, fixed: BoolArray, reached: IntArray) -> list[str]:

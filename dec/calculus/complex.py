@@ -40,7 +40,7 @@ class Complex(Cells):
         Corners of each face.
     walks : Walks or None
         Edges round each face.
-    solids : dict of kind to int64 array
+    solids : mapping of kind to int64 array, shape (n, 4) or (n, 8)
         Corners of the solid cells, in numbering order.
     lattice : Lattice or None
         For grids.

@@ -254,20 +254,31 @@ def standard_loops(loops: IntArray) -> tuple[IntArray, SignArray]:
     >>> standard_loops(np.array([[2, 0, 1, 3]]))
     (array([[0, 1, 3, 2]]), array([1], dtype=int8))
     """
+    standard, sign = np.empty_like(loops), np.empty(len(loops), np.int8)
+    for part in blocks(len(loops)):
+        standard[part], sign[part] = _standard_block(loops[part])
+    return standard, sign
+
+
+def _standard_block(loops: IntArray) -> tuple[IntArray, SignArray]:
     width = loops.shape[1]
-    start = np.argmin(loops, axis=1)
-    turns = np.arange(width)
-    forward = np.take_along_axis(loops, (start[:, None] + turns) % width, axis=1)
-    backward = np.take_along_axis(loops, (start[:, None] - turns) % width, axis=1)
-    keep = forward[:, 1] <= backward[:, 1]
-    standard, sign = np.where(keep[:, None], forward, backward), np.where(keep, 1, -1).astype(np.int8)
     ascending = np.sort(loops, axis=1)
+    if width == 3:  # ascending corners; a triangle that is turned like them goes up twice and down once
+        standard = ascending
+        sign = np.where((loops < np.roll(loops, -1, axis=1)).sum(axis=1) == 2, 1, -1)
+    else:
+        start = np.argmin(loops, axis=1)
+        turns = np.arange(width)
+        forward = np.take_along_axis(loops, (start[:, None] + turns) % width, axis=1)
+        backward = np.take_along_axis(loops, (start[:, None] - turns) % width, axis=1)
+        keep = forward[:, 1] <= backward[:, 1]
+        standard, sign = np.where(keep[:, None], forward, backward), np.where(keep, 1, -1)
     for row in np.flatnonzero((ascending[:, 1:] == ascending[:, :-1]).any(axis=1)):  # a corner stands there twice
         corners = loops[row].tolist()
         ways = [(corners[i:] + corners[:i], 1) for i in range(width)]
         ways += [(way[::-1], -1) for way, _ in ways]
         standard[row], sign[row] = min(ways, key=lambda way: way[0])
-    return standard, sign
+    return standard, sign.astype(np.int8)
 
 
 def _sides(faces: Ragged) -> tuple[IntArray, IntArray, IntArray, int | None]:

@@ -79,7 +79,7 @@ def _tell_apart(blocks: list[AnyArray], width: int, n_vertices: int) -> tuple[In
         return np.empty((0, width), np.int64), np.empty(0, np.int64), np.empty(0, np.int8)
     given = np.concatenate(blocks)
     standard, sign = standard_loops(given)
-    ascending = np.sort(given, axis=1)
+    ascending = standard if width == 3 else np.sort(given, axis=1)
     _, _, pair = unique_pairs(ascending[:, 0], ascending[:, 1], n_vertices)
     if width == 3:
         _, _, which = unique_pairs(pair, ascending[:, 2], n_vertices)

@@ -84,7 +84,7 @@ def _readings(rng: random.Random, widest: int) -> tuple[int, Ends, dict[int, Fra
     ends = [(rng.randrange(n), rng.randrange(n)) for _ in range(m)]
     missing = rng.choice([0.0, 0.2, 0.5, 1.0])
     texts = ["" if rng.random() < missing else str(rng.randint(-300, 300) / 10 ** rng.randint(0, 2)) for _ in ends]
-    spans = [f"1e{rng.randint(0, widest)}" if widest else rng.choice(["0.25", "0.5", "1", "2"]) for _ in ends]
+    spans = [f"1e{rng.randint(-widest, 0)}" if widest else rng.choice(["0.25", "0.5", "1", "2"]) for _ in ends]
     tail, head = np.array(ends).T
     frame = pd.DataFrame({
         "id": [f"e{e}" for e in range(m)], "from": [f"v{v}" for v in tail], "to": [f"v{v}" for v in head],

@@ -47,6 +47,10 @@ def compare_edges(audit: Audit, exact: Exact, case: Case, tolerance: float) -> N
         assert np.isnan(table["redundancy"][e]) == (e not in case.reading)
         if e in case.reading:
             assert is_close(table["redundancy"][e], exact.redundancy[e], tolerance)
+        if word == "unchecked":
+            assert table["adjusted"][e] == table["value"][e]
+            assert table["correction"][e] == 0.0
+            assert table["adjusted_sd"][e] == float(case.sd[e])
         if word == "checked":
             unit = sqrt(case.sd[e] ** 2 * exact.redundancy[e])
             statistic = abs(float(exact.value[e] - case.reading[e])) / unit
@@ -208,9 +212,9 @@ def test_loops_agree_with_exact_least_squares(block: range):
         check_differences(difference_case(seed), 1e-9)
 
 
-@pytest.mark.parametrize(("powers", "tolerance"), [(2, 1e-9), (3, 1e-9), (4, 1e-9), (5, 1e-8), (6, 1e-5)])
+@pytest.mark.parametrize(("powers", "tolerance"), [(2, 1e-9), (3, 1e-9), (4, 1e-8), (5, 1e-7), (6, 1e-5)])
 def test_standard_deviations_far_apart_cost_few_digits(powers: int, tolerance: float):
-    """Sd from 1 to 100 ... 1,000,000 in one network, as a percentage of readings of very different size gives them."""
-    for seed in range(60):
+    """Sd from 0.01 ... 0.000001 to 1 in one network, as a percentage of readings of very different size gives them."""
+    for seed in range(40):
         check_flows(flow_case(seed, powers), tolerance)
         check_differences(difference_case(seed, powers), tolerance)

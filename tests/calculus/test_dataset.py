@@ -1,111 +1,151 @@
-"""Tables become a complex with named columns."""
+"""Datasets from frames and tables: ids are text, nothing is guessed, and every refusal names its place."""
+
+from decimal import Decimal
 
 import numpy as np
 import pandas as pd
 import pytest
 
-from dec.calculus.complex import Complex
-from dec.calculus.dataset import Dataset, Field
+from dec.calculus.dataset import Dataset, Field, Input
 from dec.errors import InputError
 
-EDGES = pd.DataFrame({"from": ["A", "B", "A"], "to": ["B", "C", "B"], "id": ["p", "q", "r"], "flow": ["1.50", "", "2"]})
-NODES = pd.DataFrame({"id": ["C", "B", "A", "D"], "x": [0.0, 1.0, 2.0, 3.0], "y": [0, 0, 1, 1], "flow": [1, 2, 3, 4]})
+
+def frames(edges: dict, nodes: dict | None = None) -> Dataset:
+    return Dataset.from_frames(pd.DataFrame(edges), None if nodes is None else pd.DataFrame(nodes))
 
 
-def test_without_a_node_table_vertices_come_in_the_order_the_edges_name_them():
-    net = Dataset.from_frames(EDGES)
-    K = net.complex
-    assert K.vertex_ids.tolist() == ["A", "B", "C"]
-    assert K.edge_ids.tolist() == ["p", "q", "r"]
-    assert (K.tail.tolist(), K.head.tolist()) == ([0, 1, 0], [1, 2, 1])
-    assert K.points is None
-    flow = net.cochain("flow").values
-    assert flow[[0, 2]].tolist() == [1.5, 2.0]
-    assert np.isnan(flow[1])
+def test_ids_are_text_as_written():
+    net = frames({"id": ["007", "NA"], "from": ["<script>", "nan"], "to": ["nan", "None"]})
+    assert net.complex.vertex_ids.tolist() == ["<script>", "nan", "None"]
+    assert net.complex.edge_ids.tolist() == ["007", "NA"]
 
 
-def test_a_node_table_gives_the_vertices_their_order_and_their_places():
-    K = Dataset.from_frames(EDGES, NODES).complex
-    assert K.vertex_ids.tolist() == ["C", "B", "A", "D"]
-    assert (K.tail.tolist(), K.head.tolist()) == ([2, 1, 2], [1, 0, 1])
-    assert K.points.tolist() == [[0, 0], [1, 0], [2, 1], [3, 1]]
-    missing = NODES.assign(y=[0, np.nan, 1, 1])
-    assert Dataset.from_frames(EDGES, missing).complex.points is None
+def test_whole_numbers_as_ids_become_text_and_edges_without_ids_are_counted_from_one():
+    net = frames({"from": [1, 2], "to": [2, 3]}, {"id": [3, 2, 1]})
+    assert net.complex.vertex_ids.tolist() == ["3", "2", "1"]
+    assert net.complex.tail.tolist() == [2, 1]
+    assert net.complex.edge_ids.tolist() == ["1", "2"]
 
 
-def test_edges_without_ids_are_numbered_from_one():
-    assert Dataset.from_frames(EDGES.drop(columns="id")).complex.edge_ids.tolist() == ["1", "2", "3"]
+def test_vertices_come_in_the_order_of_the_node_table_or_else_of_first_mention():
+    assert frames({"from": ["B", "A"], "to": ["A", "C"]}).complex.vertex_ids.tolist() == ["B", "A", "C"]
+    net = frames({"from": ["B"], "to": ["A"]}, {"id": ["A", "B", "Z"]})
+    assert net.complex.vertex_ids.tolist() == ["A", "B", "Z"]
 
 
-def test_ids_are_text_as_written_and_integers_their_digits():
-    net = Dataset.from_frames(pd.DataFrame({"from": ["007", "NA"], "to": ["7", "007"], "q": [1, 2]}))
-    assert net.complex.vertex_ids.tolist() == ["007", "7", "NA"]
-    assert Dataset.from_frames(pd.DataFrame({"from": [1], "to": [2]})).complex.vertex_ids.tolist() == ["1", "2"]
+def test_self_loops_and_parallel_edges_stay():
+    net = frames({"from": ["A", "A", "A"], "to": ["B", "B", "A"]})
+    assert (net.complex.tail.tolist(), net.complex.head.tolist()) == ([0, 0, 0], [1, 1, 0])
 
 
-@pytest.mark.parametrize(
-    ("values", "expected"),
-    [
-        (pd.array([1, None, 3], dtype="Int64"), [1.0, np.nan, 3.0]),
-        (pd.array([0.5, None, 3], dtype="Float64"), [0.5, np.nan, 3.0]),
-        (np.array([1, 2, 3], np.uint8), [1.0, 2.0, 3.0]),
-        (np.array([1, 2, 2**63], np.uint64), [1.0, 2.0, 2.0**63]),
-    ],
-)
-def test_nullable_and_unsigned_columns_keep_their_values(values, expected):
-    net = Dataset.from_frames(EDGES.assign(q=values))
-    assert np.array_equal(net.cochain("q").values, expected, equal_nan=True)
-
-
-def test_unsigned_integers_beyond_int64_stay_exact():
-    net = Dataset.from_frames(EDGES.assign(q=np.array([1, 2, 2**64 - 1], np.uint64)))
-    assert net.column("q", 1).decimals().integers.tolist() == [1, 2, 2**64 - 1]
+ONE_EDGE = {"from": ["A"], "to": ["B"]}
+TWO_EDGES = {"from": ["A", "B"], "to": ["B", "C"]}
 
 
 @pytest.mark.parametrize(
-    ("edges", "nodes", "message"),
+    ("edges", "nodes", "says"),
     [
-        (EDGES.drop(columns="from"), None, "edges: a column 'from' is needed; there are to, id, flow"),
-        (EDGES.rename(columns={"from": "form"}), None, "a column 'from' is needed; .* did you mean 'form'?"),
-        (EDGES.assign(id=["p", "q", "p"]), None, r"edges row 2: edge id 'p' is used before \(edges row 0\)"),
-        (EDGES.assign(to=["B", "", "B"]), None, "edges row 1: to is empty; every row needs one"),
-        (EDGES.assign(to=["B", "E", "B"]), NODES, "edges row 1: to names 'E', which the node table does not list"),
-        (EDGES, NODES.assign(id=list("ABCA")), "nodes row 3: node id 'A' is used before"),
-        (EDGES, NODES.drop(columns="id"), "nodes: a column 'id' is needed"),
-        (EDGES, NODES.assign(x=["0", "1", "east", "3"]), "nodes row 2: x 'east' is not a number"),
-        (EDGES.head(0), None, "edges has columns but no rows"),
-        ([("A", "B")], None, "edges must be a pandas DataFrame, got list"),
-        (EDGES.assign(**{"from": [1.0, 2.0, 1.5]}), None, "from must hold names, found floating-point numbers"),
-        (pd.concat([EDGES, EDGES[["flow"]]], axis=1), None, "column 'flow' stands there twice"),
+        (
+            {"from": ["A"], "too": ["B"]},
+            None,
+            "edges: a column 'to' is needed; there are from, too; did you mean 'too'?",
+        ),
+        (ONE_EDGE, {"name": ["A"]}, "nodes: a column 'id' is needed"),
+        ({"id": ["x", "x"], **TWO_EDGES}, None, "edges row 1: edge id 'x' is used before (edges row 0)"),
+        ({"id": ["x", None], **TWO_EDGES}, None, "edges row 1: id is empty"),
+        ({"from": ["A", np.nan], "to": ["B", "C"]}, None, "edges row 1: from is empty"),
+        ({"from": ["A", "B"], "to": ["B", " "]}, None, "edges row 1: to is empty"),
+        ({"from": [1.0, 2.0], "to": [2, 3]}, None, "edges: from must hold names, found floating-point numbers"),
+        (
+            {"from": ["J12"], "to": ["J 13"]},
+            {"id": ["J12", "J13"]},
+            "edges row 0: to names 'J 13', which the node table",
+        ),
+        ({"from": ["J12"], "to": ["J 13"]}, {"id": ["J12", "J13"]}, "does not list; close names: 'J13'"),
+        (ONE_EDGE, {"id": ["A", "B", "A"]}, "nodes row 2: node id 'A' is used before (nodes row 0)"),
+        ({"from": [], "to": []}, None, "edges has columns but no rows"),
+        (ONE_EDGE, {"id": []}, "nodes has columns but no rows"),
+        ({}, None, "a column 'from' is needed; there are none"),
+        (ONE_EDGE, {"id": ["A", "B"], "x": ["1", "east"], "y": ["0", "0"]}, "nodes row 1: x 'east' is not a number"),
     ],
 )
-def test_frames_that_make_no_network_are_refused_with_their_row(edges, nodes, message):
-    with pytest.raises(InputError, match=message) as caught:
-        Dataset.from_frames(edges, nodes)
-    assert "\n" not in str(caught.value)
+def test_frames_that_cannot_be_used_are_refused_by_name_and_place(edges: dict, nodes: dict | None, says: str):
+    with pytest.raises(InputError) as caught:
+        frames(edges, nodes)
+    assert says in str(caught.value)
 
 
-def test_a_column_is_asked_by_name_and_by_degree_where_both_tables_have_it():
-    net = Dataset.from_frames(EDGES, NODES)
-    assert net.cochain("flow", 0).values.tolist() == [1, 2, 3, 4]
-    assert net.cochain("x").degree == 0
-    with pytest.raises(InputError, match="column 'flow' exists on vertices and edges; give the degree"):
-        net.cochain("flow")
-    with pytest.raises(InputError, match=r"no column 'flwo' among the edges; .* did you mean 'flow'?"):
-        net.cochain("flwo", 1)
-    with pytest.raises(InputError, match="no column 'q' among the edges"):
+@pytest.mark.parametrize("given", [None, {"from": ["A"], "to": ["B"]}, [["A", "B"]]])
+def test_anything_but_a_frame_is_refused(given):
+    with pytest.raises(InputError, match="edges must be a pandas DataFrame, got"):
+        Dataset.from_frames(given)
+
+
+def test_two_columns_of_one_name_are_refused():
+    frame = pd.DataFrame([["A", "B", 1, 2]], columns=["from", "to", "flow", "flow"])
+    with pytest.raises(InputError, match="column 'flow' stands there twice"):
+        Dataset.from_frames(frame)
+
+
+@pytest.mark.parametrize(
+    ("values", "integers", "places"),
+    [
+        (pd.array([1, None], dtype="Int64"), [1, 0], 0),
+        (pd.array([1.5, None], dtype="Float64"), [15, 0], 1),
+        (np.array([2**64 - 1, 3], dtype=np.uint64), [2**64 - 1, 3], 0),
+        (np.array([-128, 127], dtype=np.int8), [-128, 127], 0),
+        ([Decimal("0.10"), None], [10, 0], 2),
+        (["1.50", ""], [150, 0], 2),
+        (pd.Series([1e-7, "2"], dtype=object), [1, 20000000], 7),
+    ],
+)
+def test_value_columns_of_any_kind_keep_every_digit(values, integers: list[int], places: int):
+    found = frames({"from": ["A", "A"], "to": ["B", "B"], "y": values}).column("y", 1).decimals()
+    assert (found.integers.tolist(), found.places) == (integers, places)
+
+
+def test_a_column_that_is_not_there_is_refused_with_the_nearest_name():
+    net = frames({"from": ["A"], "to": ["B"], "flow": [1]})
+    with pytest.raises(InputError, match=r"no column 'flwo' among the edges; .* did you mean 'flow'"):
+        net.column("flwo", 1)
+    with pytest.raises(InputError, match="no column 'h' among the vertices; there are none"):
+        net.column("h", 0)
+    with pytest.raises(InputError, match="no column 5 among the edges"):
+        net.column(5, 1)
+
+
+def test_cochains_have_nan_where_nothing_was_measured_and_need_a_degree_for_a_shared_name():
+    edges = {"from": ["A", "B"], "to": ["B", "A"], "q": ["1.5", ""]}
+    net = frames(edges, {"id": ["A", "B"], "q": [1, 2], "h": [3, 4]})
+    np.testing.assert_array_equal(net.cochain("q", 1).values, [1.5, np.nan])
+    assert net.cochain("h").degree == 0
+    with pytest.raises(InputError, match="column 'q' exists on vertices and edges; give the degree"):
         net.cochain("q")
 
 
-def test_a_field_is_asked_by_name_and_by_place_where_it_has_two():
-    K = Complex.from_faces([[0, 1, 2]])
-    at = {place: Field("U", place, np.zeros((n, 3))) for place, n in (("vertices", 3), ("cells", 1))}
-    part = Dataset(K, fields={"U": at, "p": {"cells": at["cells"]}})
-    assert part.field("U", "cells") is at["cells"]
-    assert part.field("p") is at["cells"]
+def test_points_need_x_and_y_of_every_node():
+    edges = {"from": ["A"], "to": ["B"]}
+    net = frames(edges, {"id": ["A", "B"], "x": ["0", "3"], "y": [0, 4], "z": [1, 1]})
+    assert net.complex.points.tolist() == [[0, 0, 1], [3, 4, 1]]
+    assert frames(edges, {"id": ["A", "B"], "x": ["0", ""], "y": [0, 4]}).complex.points is None
+    assert frames(edges, {"id": ["A", "B"], "x": ["0", "1"]}).complex.points is None
+
+
+def test_fields_are_found_by_name_and_place():
+    network = frames({"from": ["A"], "to": ["B"]})
+    at_vertices, at_cells = (Field("U", at, np.zeros((2, 3))) for at in ("vertices", "cells"))
+    both = Dataset(network.complex, fields={"U": {"vertices": at_vertices, "cells": at_cells}})
+    assert both.field("U", "cells") is at_cells
     with pytest.raises(InputError, match="given at vertices and at cells; say which"):
-        part.field("U")
-    with pytest.raises(InputError, match="field 'p' is not given at vertices but at cells"):
-        part.field("p", "vertices")
-    with pytest.raises(InputError, match="no field 'u'; there are U, p"):
-        part.field("u")
+        both.field("U")
+    one = Dataset(network.complex, fields={"U": {"cells": at_cells}})
+    assert one.field("U") is at_cells
+    with pytest.raises(InputError, match="not given at vertices but at cells"):
+        one.field("U", "vertices")
+    with pytest.raises(InputError, match="no field 'V'; there are U"):
+        one.field("V")
+
+
+def test_inputs_are_kept_with_the_data():
+    read = Input("edges.csv", "0" * 64, 10)
+    assert frames({"from": ["A"], "to": ["B"]}).with_inputs(read).inputs == (read,)

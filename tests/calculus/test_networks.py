@@ -136,3 +136,11 @@ def test_edges_between_vertices_agree_with_looking_at_every_edge():
     edges, signs = graphs.edges_between(K, start, end)
     assert edges.tolist() == list(range(30))
     assert signs.tolist() == [1 if not b or t == h else -1 for b, t, h in zip(back, K.tail, K.head, strict=True)]
+
+
+def test_a_triangle_that_walks_a_self_loop_and_an_edge_there_and_back_counts_the_self_loop_only():
+    K = Complex.from_edges([0, 0], [0, 1]).with_faces([[0, 0, 1]])
+    assert K.walks.edges.tolist() == [0, 1, 1]
+    assert K.walks.signs.tolist() == [1, 1, -1]
+    assert K.coboundary(1).toarray().tolist() == [[1, 0]]
+    assert K.betti() == (1, 0, 0)

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from dec.calculus.complex import Complex
-from dec.topology.surfaces import Incidences, sheets
+from dec.topology.surfaces import Incidences, reversing_walk, sheets
 
 MOEBIUS = [[0, 1, 2], [1, 2, 3], [2, 3, 4], [3, 4, 0], [4, 0, 1]]
 
@@ -170,3 +170,14 @@ def test_faces_round_a_vertex_of_degree_200_form_one_fan():
     K = Complex.from_faces(faces)
     assert K.is_manifold
     assert [len(loop) for loop in loops_of(faces)] == [200]
+
+
+def test_of_two_ways_to_turn_as_few_faces_the_one_that_keeps_the_lowest_is_proposed():
+    assert Complex.from_faces([[0, 1, 2], [0, 1, 3]]).turning_proposal().tolist() == [1]
+    four = Complex.from_faces([[0, 1, 2], [1, 2, 3], [2, 3, 4], [3, 4, 5]])
+    assert four.turning_proposal().tolist() == [1, 3]
+
+
+def test_no_walk_reverses_a_face_of_an_orientable_sheet():
+    K = Complex.from_faces([[0, 1, 2], [2, 1, 3]])
+    assert reversing_walk(K.incidences, 0).tolist() == []
