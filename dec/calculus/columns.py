@@ -2,14 +2,17 @@
 
 import re
 from dataclasses import dataclass
-from typing import NoReturn
+from typing import TYPE_CHECKING, Any, NoReturn
 
 import numpy as np
 
 from dec.arrays import AnyArray, BoolArray, FloatArray, IntArray, ObjectArray, frozen
 from dec.errors import InputError
 
-__all__ = ["Column", "Decimals", "reads_as_number"]
+if TYPE_CHECKING:
+    import pandas as pd
+
+__all__ = ["Column", "Decimals", "cells_of", "reads_as_number"]
 
 _NUMBER = {
     sign: re.compile(rf"\s*[+-]?([0-9]+({re.escape(sign)}[0-9]*)?|{re.escape(sign)}[0-9]+)([eE][+-]?[0-9]+)?\s*")
@@ -214,3 +217,35 @@ def _mantissa_and_places(text: str) -> tuple[int, int]:
     head, _, exponent = text.lower().partition("e")
     whole, _, fraction = head.strip().partition(".")
     return int(whole + fraction), len(fraction) - (int(exponent) if exponent else 0)
+
+
+def cells_of(series: "pd.Series[Any]", *, is_id: bool) -> AnyArray:
+    """The cells of a pandas series, for a Column.
+
+    Parameters
+    ----------
+    series : pandas Series
+    is_id : bool
+        Whether it holds names, which are text always.
+
+    Returns
+    -------
+    float64, int64 or object array of str, shape (n,)
+        Floats and integers as they are, and everything else, or what int64 does not hold, as text. A 32-bit float
+        counts as the shortest decimal that prints it, 0.1 and not 0.10000000149.
+
+    Examples
+    --------
+    >>> import pandas as pd
+    >>> cells_of(pd.Series([0.1, None], dtype="float32"), is_id=False)
+    array([0.1, nan])
+    """
+    kind = getattr(series.dtype, "kind", "O")
+    blank = series.isna().to_numpy()
+    if not is_id and kind == "f":
+        if getattr(series.dtype, "itemsize", 8) < 8:
+            return series.to_numpy(dtype=np.float32, na_value=np.nan).astype(str).astype(np.float64)
+        return series.to_numpy(dtype=np.float64, na_value=np.nan)
+    if not is_id and kind in "iu" and not blank.any() and (kind == "i" or not len(series) or series.max() < 2**63):
+        return series.to_numpy(dtype=np.int64)
+    return np.array(["" if b else str(v) for b, v in zip(blank, series, strict=True)], dtype=object)

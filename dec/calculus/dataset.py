@@ -4,13 +4,13 @@ import difflib
 from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
 from types import MappingProxyType
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
-from dec.arrays import AnyArray, FloatArray, IntArray, ObjectArray
+from dec.arrays import FloatArray, IntArray, ObjectArray
 from dec.calculus.cochain import Cochain
-from dec.calculus.columns import Column
+from dec.calculus.columns import Column, cells_of
 from dec.calculus.complex import Complex
 from dec.errors import InputError
 
@@ -232,19 +232,8 @@ def _frame_columns(frame: "pd.DataFrame", source: str) -> dict[str, Column]:
         if is_id and getattr(series.dtype, "kind", "O") == "f" and series.notna().all():
             message = f"{source}: {name} must hold names, found floating-point numbers; give ids as text or integers"
             raise InputError(message)
-        columns[str(name)] = Column(str(name), _cells(series, is_id=is_id), source)
+        columns[str(name)] = Column(str(name), cells_of(series, is_id=is_id), source)
     return columns
-
-
-def _cells(series: "pd.Series[Any]", *, is_id: bool) -> AnyArray:
-    """Return floats and integers as they are, and everything else, or what int64 does not hold, as text."""
-    kind = getattr(series.dtype, "kind", "O")
-    blank = series.isna().to_numpy()
-    if not is_id and kind == "f":
-        return series.to_numpy(dtype=np.float64)
-    if not is_id and kind in "iu" and not blank.any() and (kind == "i" or not len(series) or series.max() < 2**63):
-        return series.to_numpy(dtype=np.int64)
-    return np.array(["" if b else str(v) for b, v in zip(blank, series, strict=True)], dtype=object)
 
 
 def _required(table: Mapping[str, Column], name: str) -> Column:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from dec.arrays import IntArray, ObjectArray, frozen
-from dec.calculus.columns import Column
+from dec.calculus.columns import Column, cells_of
 from dec.errors import InputError
 from dec.files.dialect import Dialect, dialect_of
 from dec.files.sources import Source
@@ -193,10 +193,5 @@ def _column(series: "pd.Series[Any]", name: str, source: str) -> Column:
     if name in _ID_COLUMNS and kind == "f":
         message = f"{source}: {name} must hold names, found floating-point numbers; save ids as text"
         raise InputError(message)
-    if kind in "iuf" and name not in _ID_COLUMNS:
-        blank = series.isna().to_numpy()
-        cells: Any = series.to_numpy(dtype=np.float64 if kind == "f" or blank.any() else np.int64, na_value=np.nan)
-    else:
-        blank = series.isna().to_numpy()
-        cells = np.array(["" if b else str(v) for b, v in zip(blank, series, strict=True)], dtype=object)
+    cells = cells_of(series, is_id=name in _ID_COLUMNS)
     return Column(name, frozen(cells), source)

@@ -149,3 +149,9 @@ def test_fields_are_found_by_name_and_place():
 def test_inputs_are_kept_with_the_data():
     read = Input("edges.csv", "0" * 64, 10)
     assert frames({"from": ["A"], "to": ["B"]}).with_inputs(read).inputs == (read,)
+
+
+def test_a_32_bit_float_counts_as_the_decimal_that_prints_it():
+    frame = pd.DataFrame({"from": ["A", "B"], "to": ["B", "C"], "flow": np.array([0.1, np.nan], dtype="f4")})
+    decimals = Dataset.from_frames(frame).column("flow", 1).decimals()
+    assert (decimals.integers.tolist(), decimals.places, decimals.present.tolist()) == ([1, 0], 1, [True, False])
