@@ -23,3 +23,5 @@ from .files.read import read as read
 from .findings import Finding as Finding
 from .geometry.fields import integrate_field as integrate_field
 from .geometry.metric import Metric as Metric
+from .solvers.poisson import solve_poisson as solve_poisson
+from .solvers.solution import Solution as Solution

@@ -97,6 +97,32 @@ def _loops(options: argparse.Namespace) -> int:
     return _conclude(options, audit)
 
 
+def _solve(options: argparse.Namespace) -> int:
+    from functools import partial
+
+    from dec.audit.output import flow_bytes
+    from dec.files.writing import write_atomically
+    from dec.report.terminal import solve_view
+    from dec.solvers.network import solve_network
+
+    with _patience("solving", options):
+        data = _read(options)
+        solution = solve_network(
+            data, options.source, options.conductance, options.fixed, exponent=options.exponent, rtol=options.rtol,
+            method=options.method, unbalanced=options.unbalanced,
+        )  # fmt: skip
+        found = solution.to_dict()
+        found["inputs"] = [{"name": i.name, "sha256": i.sha256, "bytes": i.bytes} for i in data.inputs]
+        found["asked"]["source"] = options.source
+    if options.output == "-":
+        sys.stdout.buffer.write(flow_bytes(solution))
+        return OK
+    if options.output:
+        write_atomically(options.output, flow_bytes(solution), force=options.force)
+    _show(options, found, partial(solve_view, why=options.why))
+    return OK
+
+
 def _demo(options: argparse.Namespace) -> int:
     from dec.demo import run
 
@@ -255,6 +281,31 @@ def _parser(as_json: bool) -> _Parser:
                   "  dec loops part.vtu --field velocity")  # fmt: skip
     _audited(loops)
     loops.add_argument("--fixed", metavar="COL", help="node column of values that are held; empty cells are not")
+
+    solve = _verb(
+        verbs,
+        "solve",
+        _solve,
+        "potentials and flows from sources",
+        "dec solve pipes.csv --nodes nodes.csv --source demand --fixed head",
+    )
+    solve.add_argument("file", metavar="FILE", help="edge table; - reads it from standard input")
+    solve.add_argument("--source", metavar="COL", required=True, help="node column of what is put in")
+    solve.add_argument("--conductance", metavar="COL", help="edge column of flow per drop (1 everywhere)")
+    solve.add_argument("--fixed", metavar="COL", help="node column of potentials that are held; empty cells are not")
+    solve.add_argument(
+        "--exponent", type=float, default=1.0, metavar="N", help="n in drop = q |q|^(n-1) / c, 1 to 2 (1)"
+    )
+    solve.add_argument("--rtol", type=float, default=1e-8, metavar="R", help="largest relative residual (1e-8)")
+    solve.add_argument(
+        "--method", default="auto", metavar="NAME", help="auto, direct, multigrid, elimination, gradients"
+    )
+    solve.add_argument(
+        "--unbalanced", choices=("refuse", "spread"), default="refuse", help="what to do with a surplus (refuse)"
+    )
+    solve.add_argument("--why", action="store_true", help="say why the method was chosen")
+    solve.add_argument("-o", dest="output", metavar="FILE", help="write flows and end potentials (csv); - prints them")
+    _common(solve)
 
     demo = _verb(verbs, "demo", _demo, "the main job on the built-in example", "dec demo\n  dec demo harrowmere")
     demo.add_argument("dir", metavar="DIR", nargs="?", help="also write the example's files and results there")

@@ -10,8 +10,9 @@ from dec.calculus.dataset import Field
 from dec.errors import InputError
 from dec.files.tables_out import csv_bytes
 from dec.files.vtu import vtu_bytes
+from dec.solvers.solution import Solution
 
-__all__ = ["result_bytes"]
+__all__ = ["flow_bytes", "result_bytes"]
 
 
 def result_bytes(audit: Audit, name: str) -> bytes:
@@ -43,6 +44,18 @@ def result_bytes(audit: Audit, name: str) -> bytes:
     fitting = ".csv (a table)" if on_network else ".vtu (a mesh)"
     message = f"-o {name}: the result of this audit must be written as {fitting}"
     raise InputError(message)
+
+
+def flow_bytes(solution: Solution) -> bytes:
+    """The flow of every edge of a solution with the potentials at its ends, as the bytes of a CSV table."""
+    K, potential = solution.potential.complex, solution.potential.values
+    edges = np.arange(K.counts[1]) if K.edge_ids is None else K.edge_ids
+    names = np.arange(K.counts[0]) if K.vertex_ids is None else K.vertex_ids
+    columns = {
+        "id": edges, "from": names[K.tail], "to": names[K.head], "flow": solution.flow.values,
+        "potential_from": potential[K.tail], "potential_to": potential[K.head],
+    }  # fmt: skip
+    return csv_bytes(columns)
 
 
 def _edge_columns(audit: Audit) -> dict[str, AnyArray]:

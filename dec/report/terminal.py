@@ -11,7 +11,7 @@ from rich.text import Text
 
 from dec.report.wording import checked_sentence, number, suspect_sentences, verdict_sentence, visible
 
-__all__ = ["audit_view", "check_view"]
+__all__ = ["audit_view", "check_view", "solve_view"]
 
 _ROWS = 8
 _AXES = ("x", "y", "z")
@@ -67,6 +67,36 @@ def check_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         table.add_row(mark, visible(finding["name"]), against, _places(finding["where"]))
     yield table
     yield from _remarks("note", result["notes"])
+
+
+def solve_view(result: Mapping[str, Any], *, why: bool = False) -> Iterator[RenderableType]:
+    """A solution for reading: how it was found and how good it is, then the largest flows and potentials.
+
+    Parameters
+    ----------
+    result : mapping
+        The object that ``Solution.to_dict`` returns, with "inputs".
+    why : bool
+        Whether to say why the method was chosen.
+    """
+    names = ", ".join(visible(i["name"]) for i in result["inputs"])
+    yield Text(f"solve for {visible(result['asked']['source'])}: {names}")
+    yield _item("method", f"{result['method']}{', because ' + visible(result['because']) if why else ''}")
+    bound = result["error_bound"]
+    says = "no error bound" if bound is None else f"error at most {number(bound, 3)} in the energy norm"
+    yield _item("accuracy", f"relative residual {number(result['residual'], 3)}; {says}")
+    if result["energy"] is not None:
+        low, high = result["energy"]
+        yield _item("energy", f"between {number(low, 10)} and {number(high, 10)}")
+    yield _item("gauge", visible(result["gauge"]))
+    for name, rows, key in (("edges", result["edges"], "flow"), ("vertices", result["vertices"], "potential")):
+        table = _table((name, "left"), (key, "right"), title=f"{name}, largest {key} first")
+        for row in sorted(rows, key=lambda r: -abs(r[key]))[:_ROWS]:
+            table.add_row(visible(row["id"]), number(row[key]))
+        yield table
+        yield from _more(len(rows))
+    yield from _remarks("note", result["notes"])
+    yield from _remarks("not shown", result["not_shown"])
 
 
 def _heading(result: Mapping[str, Any], what: str, holds: bool | None) -> RenderableType:
@@ -192,12 +222,13 @@ def _item(name: str, text: str) -> RenderableType:
     return Padding(grid, (0, 0, 0, 2))
 
 
-def _table(*columns: tuple[str, Any], title: str | None = None) -> Table:
+def _table(*columns: tuple[str, Any], title: str = "") -> Table:
+    heading = Text(title) if title else None
     table = Table(
-        box=box.SIMPLE_HEAD, title=None if title is None else Text(title), title_justify="left", pad_edge=False
-    )
-    for heading, justify in columns:
-        table.add_column(Text(heading), justify=justify, overflow="fold")
+        box=box.SIMPLE_HEAD, title=heading, title_justify="left", pad_edge=False, min_width=len(title)
+    )  # a title wider than its table would be broken in two
+    for text, justify in columns:
+        table.add_column(Text(text), justify=justify, overflow="fold")
     return table
 
 

@@ -215,7 +215,7 @@ def test_a_reader_that_leaves_early_is_no_error(junction):
 
 
 def test_help_shows_an_example_for_every_verb(run):
-    for verb in ("check", "balance", "loops", "demo"):
+    for verb in ("check", "balance", "loops", "solve", "demo"):
         code, out, _ = run(verb, "--help")
         assert code == 0
         assert f"dec {verb}" in out.split("example:")[1]
@@ -260,3 +260,36 @@ def test_the_demo_data_are_those_of_the_examples():
     assert (here / "pipes.csv").read_bytes() == (top / "examples/data/town/pipes.csv").read_bytes()
     assert (here / "nodes.csv").read_bytes() == (top / "examples/data/town/nodes.csv").read_bytes()
     assert (here / "bracket.vtu").read_bytes() == (top / "meshes/bracket.vtu").read_bytes()
+
+
+@pytest.fixture
+def divider(tmp_path: Path) -> Path:
+    """Two conductors in series from a source of 2 to a fixed potential of 5: drops of 2 and 1."""
+    (tmp_path / "e.csv").write_text("from,to,c\nA,B,1\nB,C,2\n")
+    (tmp_path / "n.csv").write_text("id,put_in,level\nA,2,\nB,0,\nC,,5\n")
+    return tmp_path
+
+
+def test_solve_gives_potentials_and_flows(run, divider):
+    words = ("solve", divider / "e.csv", "--nodes", divider / "n.csv", "--source", "put_in", "--conductance", "c")
+    code, out, err = run(*words, "--fixed", "level", "--json")
+    found = json.loads(out)
+    assert (code, err) == (0, "")
+    assert found["schema"] == "dec.solve/1"
+    assert [v["potential"] for v in found["vertices"]] == [8.0, 6.0, 5.0]
+    assert [e["flow"] for e in found["edges"]] == [2.0, 2.0]
+    code, out, _ = run(*words, "--fixed", "level", "--why", "-o", divider / "flows.csv")
+    assert code == 0
+    assert "because" in out
+    assert (divider / "flows.csv").read_text().splitlines()[1] == "1,A,B,2.0,8.0,6.0"
+
+
+def test_solve_refuses_a_surplus_and_a_missing_source(run, divider):
+    words = ("solve", divider / "e.csv", "--nodes", divider / "n.csv", "--source", "put_in")
+    code, out, err = run(*words)
+    assert (code, out) == (3, "")
+    assert "n.csv line 4" in err
+    (divider / "n.csv").write_text("id,put_in\nA,2\nB,0\nC,-1.5\n")
+    code, out, err = run(*words)
+    assert (code, out) == (4, "")
+    assert "0.5" in err
