@@ -9,7 +9,7 @@ from dec.arrays import AnyArray, FloatArray, IntArray
 from dec.audit.mesh_fields import Integrals, boundary_sums, centres, group_sums, middles
 from dec.audit.mesh_limits import Limit, table_of
 from dec.audit.mesh_repeats import refuse_repeated
-from dec.audit.mesh_statements import counted, measured, renamed, worst
+from dec.audit.mesh_statements import TOO_WIDE, counted, measured, n_undecided, renamed, worst
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
 from dec.calculus.exact import check_stokes
@@ -74,7 +74,8 @@ def balance_cells(data: Dataset, integrals: Integrals, bound: Limit, relations: 
     measure = face_area_vectors(K)[:, 2] if K.dim == 2 else cell_volumes(K)
     outward = np.where(measure < 0, -1, 1)
     sums = boundary_sums(integrals, outward)
-    cells = table_of(np.arange(K.counts[-1]), sums, bound.of(sums), centres(K, K.dim))
+    undecided = bound.undecided(sums)
+    cells = table_of(np.arange(K.counts[-1]), sums, bound.of(sums), centres(K, K.dim), undecided=undecided)
     chain = K.chain(K.dim, outward)
     skin = chain.boundary().coefficients
     boundaries, left_out = _boundary_table(data, integrals, bound, skin)
@@ -114,6 +115,7 @@ def _boundary_table(
     judged = np.arange(len(groups)) == 0
     places = np.stack([middles(K, K.dim - 1, group) for group in groups])
     ids = np.array(names, dtype=object)
+    # the whole boundary is as well known as the sum of all cells, however rough the field is at some of it
     return table_of(ids, sums, bound.of(sums), places, judged=judged, more={facets: sums.terms}), notes
 
 
@@ -136,10 +138,13 @@ def _notes(K: Complex, what: str, measure: FloatArray, skin: IntArray) -> list[s
 def _verdict(what: str, cells: Mapping[str, AnyArray], boundaries: Mapping[str, AnyArray], unit: str | None) -> str:
     row = int(np.argmax(boundaries["id"] == _WHOLE))
     total = f"{measured(boundaries['value'][row], unit)} out through the whole boundary"
-    bad = int(np.count_nonzero(~cells["holds"]))
+    bad = int(np.count_nonzero(np.equal(cells["holds"], False)))
     if bad:
         found = worst(cells, unit, f"out of {what}")
         return f"{bad} of {counted(len(cells['id']), what)} not balanced, worst {found}; {total}"
     if not boundaries["holds"][row]:
         return f"every {what} balances, but not all together: {total} where {boundaries['limit'][row]:.2g} is allowed"
+    undecided = n_undecided({what: cells})
+    if undecided:
+        return f"not decided at {undecided} of {counted(len(cells['id']), what)}{TOO_WIDE}; {total}"
     return f"every {what} balances within the limit; {total}"

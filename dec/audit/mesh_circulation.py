@@ -8,7 +8,16 @@ from dec.arrays import AnyArray
 from dec.audit.mesh_fields import Integrals, boundary_sums, centres, integrated, mesh_counts, walk_places, walk_sums
 from dec.audit.mesh_holes import Holes, find_holes, no_walks
 from dec.audit.mesh_limits import Limit, read_limit, table_of
-from dec.audit.mesh_statements import beyond_limit, counted, renamed, whole_rows, worst
+from dec.audit.mesh_statements import (
+    TOO_WIDE,
+    all_hold,
+    beyond_limit,
+    counted,
+    n_undecided,
+    renamed,
+    whole_rows,
+    worst,
+)  # fmt: skip
 from dec.audit.record import Audit
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
@@ -63,7 +72,7 @@ def audit_circulation(data: Dataset, field: str, at: str | None, limit: float | 
         "holes": _walk_table(integrals, holes.walks, bound, "hole"),
     }
     whole, turned = _whole(K, integrals)
-    ok = all(bool(table["holds"].all()) for table in tables.values())
+    ok = all_hold(tables)
     rank = K.counts[1] - K.counts[0] + counts["components"]
     return Audit(
         "loop", None if ok and holes.unlisted else ok, data, counts, rank - holes.unlisted, None, bound.absolute, None,
@@ -97,14 +106,17 @@ def _boundary_notes(K: Complex, boundaries: Walks) -> list[str]:
 def _face_table(integrals: Integrals, bound: Limit) -> tuple[dict[str, AnyArray], list[str]]:
     K = integrals.cochain.complex
     sums = boundary_sums(integrals)
-    return table_of(np.arange(K.counts[2]), sums, bound.of(sums), centres(K, 2)), bound.doubts(sums, "face")
+    undecided = bound.undecided(sums)
+    table = table_of(np.arange(K.counts[2]), sums, bound.of(sums), centres(K, 2), undecided=undecided)
+    return table, bound.doubts(sums, "face")
 
 
 def _walk_table(integrals: Integrals, walks: Walks, bound: Limit, what: str) -> dict[str, AnyArray]:
     sums = walk_sums(integrals, walks)
     ids = np.array([f"{what} {k + 1}" for k in range(len(walks))], dtype=object)
     places = walk_places(integrals.cochain.complex, walks)
-    return table_of(ids, sums, bound.of(sums), places, more={"edges": np.diff(walks.offsets)})
+    more = {"edges": np.diff(walks.offsets)}
+    return table_of(ids, sums, bound.of(sums), places, undecided=bound.undecided(sums), more=more)
 
 
 def _whole(K: Complex, integrals: Integrals) -> tuple[Finding, str]:
@@ -134,14 +146,18 @@ def _verdict(
     tables: Mapping[str, Mapping[str, AnyArray]], counts: Mapping[str, int], holes: Holes, unit: str | None
 ) -> str:
     faces = tables["faces"]
-    bad = int(np.count_nonzero(~faces["holds"]))
+    bad = int(np.count_nonzero(np.equal(faces["holds"], False)))
     rounds = beyond_limit(tables["holes"], unit, "round") + beyond_limit(tables["boundaries"], unit, "round")
     around = f"; {', '.join(rounds)}" if rounds else ""
     if bad:
         found = worst(faces, unit, "round face")
         return f"{bad} of {counted(len(faces['id']), 'face')} not closed, worst {found}{around}"
-    if rounds:
+    open_faces = n_undecided({"faces": faces})
+    if rounds and not open_faces:
         return f"closed on every face{around}: no potential exists"
+    if open_faces or n_undecided(tables):
+        where = f"at {open_faces} of {counted(len(faces['id']), 'face')}" if open_faces else "round a boundary or hole"
+        return f"not decided {where}{TOO_WIDE}{around}"
     if holes.unlisted:
         return f"closed on every face; {counted(holes.unlisted, 'hole')} not examined"
     places = ["face"] + ["boundary"] * bool(counts["boundary_loops"]) + ["hole"] * bool(counts["holes"])

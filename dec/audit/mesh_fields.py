@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.sparse import csr_array
 
-from dec.arrays import AnyArray, FloatArray, IntArray
+from dec.arrays import AnyArray, BoolArray, FloatArray, IntArray
 from dec.audit.mesh_limits import Sums
 from dec.calculus.cochain import Cochain
 from dec.calculus.complex import Complex
@@ -13,14 +13,21 @@ from dec.calculus.dataset import Dataset
 from dec.errors import InputError
 from dec.geometry.accuracy import is_single_precision, rule_error
 from dec.geometry.corners import embedded, solid_blocks
-from dec.geometry.fields import field_rule, integrate_field
-from dec.geometry.measures import face_centres
+from dec.geometry.fields import field_rule, integrate_field, mean_beside
+from dec.geometry.measures import edge_lengths, face_areas, face_centres
 from dec.topology.polygons import Walks
 
 __all__ = [
     "Integrals", "boundary_sums", "centres", "group_sums", "integrated", "mesh_counts", "middles", "row_sums",
     "walk_places", "walk_sums",
 ]  # fmt: skip
+
+
+# An estimate beyond this part of the field's size says that the mesh does not resolve the field, or that a value is
+# wrong. On the sample meshes sound fields stay below 0.1 (values at vertices) and 0.24 (in cells); the median of noise
+# is 0.2 to 0.5.
+_SHARE = {"vertices": 0.125, "cells": 0.3}
+_FAINT = 0.1  # of the median magnitude: a field fainter than that is not held against its own size
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,12 +44,18 @@ class Integrals:
         The rule in words.
     at : str
         Where the field is given.
+    size : float64 array, of the shape of the values
+        What each integral would be if the field ran straight along the edge or through the face.
+    doubtful : bool array, of the shape of the values
+        True where the estimated error is no small part of that.
     """
 
     cochain: Cochain
     error: FloatArray
     rule: str
     at: str
+    size: FloatArray
+    doubtful: BoolArray
 
 
 def integrated(data: Dataset, name: str, at: str | None, quantity: str) -> Integrals:
@@ -94,7 +107,27 @@ def integrated(data: Dataset, name: str, at: str | None, quantity: str) -> Integ
     rule = field_rule(K, field.at, quantity)
     if is_single_precision(field.values):
         rule += "; the field is stored with 32 bits, and the estimated error allows for their rounding"
-    return Integrals(cochain, errors, rule, field.at)
+    size = _straight(K, field.values, field.at, cochain.degree)
+    least = _FAINT * float(np.median(np.linalg.norm(field.values, axis=1))) * _measure(K, cochain.degree)
+    doubtful = errors > _SHARE[field.at] * np.maximum(size, least)
+    return Integrals(cochain, errors, rule, field.at, size, doubtful)
+
+
+def _measure(K: Complex, degree: int) -> FloatArray:
+    return edge_lengths(K) if degree == 1 else face_areas(K)
+
+
+def _straight(K: Complex, field: FloatArray, at: str, degree: int) -> FloatArray:
+    """Return the mean magnitude of the field at each edge or face, times its length or area."""
+    size = np.linalg.norm(field, axis=1)
+    if at == "cells":
+        mean = mean_beside(K, size[:, None], degree)[:, 0]
+    elif degree == 1:
+        mean = (size[K.tail] + size[K.head]) / 2
+    else:
+        assert K.faces is not None
+        mean = np.bincount(K.faces.rows, weights=size[K.faces.flat], minlength=len(K.faces)) / K.faces.lengths
+    return np.asarray(mean * _measure(K, degree))
 
 
 def boundary_sums(integrals: Integrals, sign: AnyArray | None = None) -> Sums:
@@ -112,7 +145,8 @@ def boundary_sums(integrals: Integrals, sign: AnyArray | None = None) -> Sums:
     pattern = csr_array((np.ones(matrix.nnz), matrix.indices, matrix.indptr), shape=matrix.shape)
     return Sums(
         value if sign is None else sign * value, np.asarray(pattern @ np.abs(cochain.values)),
-        np.asarray(pattern @ integrals.error), np.diff(matrix.indptr),
+        np.asarray(pattern @ integrals.error), np.diff(matrix.indptr), np.asarray(pattern @ integrals.size),
+        np.asarray(pattern @ integrals.doubtful.astype(np.float64)),
     )  # fmt: skip
 
 
@@ -149,13 +183,16 @@ def row_sums(
     signs : int array, shape (k,), or None
     """
     values, error = integrals.cochain.values[cells], integrals.error[cells]
+    size, doubtful = integrals.size[cells], integrals.doubtful[cells].astype(np.float64)
     if signs is not None:
-        values, error = values * signs, error * np.abs(signs)
-    value, gross, errors = (
+        values, error, size, doubtful = (
+            a * b for a, b in zip((values, error, size, doubtful), (signs, *[np.abs(signs)] * 3), strict=True)
+        )
+    value, gross, errors, sizes, doubts = (
         np.bincount(rows, weights=weights, minlength=n_rows).astype(np.float64)
-        for weights in (values, np.abs(values), error)
+        for weights in (values, np.abs(values), error, size, doubtful)
     )
-    return Sums(value, gross, errors, np.bincount(rows, minlength=n_rows))
+    return Sums(value, gross, errors, np.bincount(rows, minlength=n_rows), sizes, doubts)
 
 
 def centres(K: Complex, degree: int) -> FloatArray:

@@ -1,12 +1,10 @@
 """The balance law on a mesh: nothing may appear or vanish in a face, a cell or a closed shell."""
 
-import numpy as np
-
 from dec.audit.mesh_cells import Balances, balance_cells
 from dec.audit.mesh_fields import Integrals, integrated, mesh_counts
 from dec.audit.mesh_limits import read_limit
 from dec.audit.mesh_shells import balance_shells
-from dec.audit.mesh_statements import whole_rows
+from dec.audit.mesh_statements import all_hold, whole_rows
 from dec.audit.record import Audit
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
@@ -75,6 +73,4 @@ def _through(K: Complex, integrals: Integrals) -> str:
 
 
 def _holds(found: Balances) -> bool | None:
-    if not found.dof:
-        return None
-    return not any(np.equal(table["holds"], False).any() for table in found.tables.values())
+    return all_hold(found.tables) if found.dof else None

@@ -32,12 +32,18 @@ class Sums:
         Estimated errors of the integration rule, added up.
     terms : int array, shape (n,)
         How many integrals each sum has.
+    size : float64 array, shape (n,), or None
+        The same sums of what each integral would be if the field ran straight along or through.
+    doubtful : int array, shape (n,), or None
+        How many of the integrals have an estimated error that is no small part of their size.
     """
 
     value: FloatArray
     gross: FloatArray
     error: FloatArray
     terms: AnyArray
+    size: FloatArray | None = None
+    doubtful: AnyArray | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -71,6 +77,16 @@ class Limit:
         if self.kind == "percent":
             return self.number / 100.0 * sums.gross
         return sums.error + _EPS * sums.terms * sums.gross
+
+    def undecided(self, sums: Sums) -> BoolArray:
+        """Where a sum is within the rule's own error only because that error is no small part of the field.
+
+        A wrong value widens the estimate around it, and noise everywhere, so such a sum says nothing; bool array of
+        shape (n,).
+        """
+        if self.kind != "rule" or sums.doubtful is None:
+            return np.zeros(len(sums.value), dtype=bool)
+        return np.asarray((sums.doubtful > 0) & (np.abs(sums.value) <= self.of(sums)))
 
     def said(self, gross: str, unit: str | None) -> str:
         """The limit and where it comes from, in a sentence; `gross` says what a percentage is of."""
@@ -115,13 +131,14 @@ class Limit:
 
 def _widest(sums: Sums, known: BoolArray, what: str) -> list[str]:
     """Return a note on the sum whose limit stands out, where one does."""
-    share = np.divide(sums.error, sums.gross, out=np.zeros(len(known)), where=known)
+    size = sums.gross if sums.size is None else sums.size
+    share = np.divide(sums.error, size, out=np.zeros(len(known)), where=known & (size > 0))
     widest, usual = int(np.argmax(share)), float(np.median(share[known]))
     if share[widest] < max(_WIDE, _FACTOR * usual):
         return []
     note = (
-        f"the limit is widest at {what} {widest}, {100 * share[widest]:.2g} % of gross, the median being "
-        f"{100 * usual:.2g} %: one wrong value widens the limits around it, so look there, or give a limit"
+        f"the limit is widest at {what} {widest}, {100 * share[widest]:.2g} % of what the field there could give, the "
+        f"median being {100 * usual:.2g} %: one wrong value widens the limits around it, so look there, or give a limit"
     )
     return [note]
 
@@ -182,7 +199,7 @@ def worst_first(value: FloatArray, limit: FloatArray) -> AnyArray:
 
 def table_of(
     ids: AnyArray, sums: Sums, limit: FloatArray, places: FloatArray, *, judged: BoolArray | None = None,
-    more: Mapping[str, AnyArray] | None = None,
+    undecided: BoolArray | None = None, more: Mapping[str, AnyArray] | None = None,
 ) -> dict[str, AnyArray]:  # fmt: skip
     """A table of sums, worst first.
 
@@ -195,6 +212,8 @@ def table_of(
         Shown as x, y, z.
     judged : bool array, shape (n,), or None
         False where nothing obliges the sum to be zero: its `limit` is nan and its `holds` None.
+    undecided : bool array, shape (n,), or None
+        True where the limit is too wide to say anything: `holds` is None.
     more : mapping of str to array, or None
         Further columns.
 
@@ -205,6 +224,9 @@ def table_of(
     """
     holds: AnyArray = np.abs(sums.value) <= limit
     shown = limit
+    if undecided is not None and undecided.any():
+        holds = holds.astype(object)
+        holds[undecided] = None
     if judged is not None and not judged.all():
         holds = holds.astype(object)
         holds[~judged] = None

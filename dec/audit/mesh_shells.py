@@ -1,5 +1,7 @@
 """The balance law on a surface in space: net flux out of every closed shell."""
 
+from dataclasses import replace
+
 import numpy as np
 
 from dec.arrays import AnyArray, BoolArray, FloatArray, IntArray
@@ -7,7 +9,7 @@ from dec.audit.mesh_cells import Balances
 from dec.audit.mesh_fields import Integrals, group_sums, middles, row_sums
 from dec.audit.mesh_limits import Limit, Sums, table_of
 from dec.audit.mesh_repeats import refuse_repeated
-from dec.audit.mesh_statements import beyond_limit, counted
+from dec.audit.mesh_statements import TOO_WIDE, beyond_limit, counted
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError
@@ -49,10 +51,12 @@ def balance_shells(data: Dataset, integrals: Integrals, bound: Limit, unit: str 
     _refuse_mixed(K, closed, badly)
     size = np.bincount(label, minlength=count)
     sums = row_sums(integrals, label, count)
-    sums = Sums(np.where(badly == 0, sums.value, np.nan), sums.gross, sums.error, size)
+    sums = replace(sums, value=np.where(badly == 0, sums.value, np.nan), terms=size)
     places = _sheet_places(K, label, size)
     ids = _sheet_names(closed)
-    shells = table_of(ids, sums, bound.of(sums), places, judged=closed, more={"faces": size})
+    shells = table_of(
+        ids, sums, bound.of(sums), places, judged=closed, undecided=bound.undecided(sums), more={"faces": size}
+    )
     tables = {"shells": shells}
     regions = _region_table(data, integrals, bound)
     if regions is not None:
@@ -65,6 +69,13 @@ def balance_shells(data: Dataset, integrals: Integrals, bound: Limit, unit: str 
         (*_notes(K, closed, badly, ids), *_doubts(bound, sums, closed)),
         ("that a part is tight: a closed mesh is not a tight part",),
     )
+
+
+def _is_tilted_plane(K: Complex) -> bool:
+    assert K.points is not None
+    spread = np.cov(K.points.T)
+    smallest, _, largest = np.linalg.eigvalsh(spread)
+    return bool(smallest <= 1e-18 * largest)
 
 
 def _closed(K: Complex) -> BoolArray:
@@ -124,11 +135,18 @@ def _region_table(data: Dataset, integrals: Integrals, bound: Limit) -> dict[str
     judged = np.array([K.region(group).is_closed for group in groups])
     places = np.stack([middles(K, 2, group) for group in groups])
     ids = np.array([region.name for region in regions], dtype=object)
-    return table_of(ids, sums, bound.of(sums), places, judged=judged, more={"faces": sums.terms})
+    undecided = bound.undecided(sums)
+    more = {"faces": sums.terms}
+    return table_of(ids, sums, bound.of(sums), places, judged=judged, undecided=undecided, more=more)
 
 
 def _notes(K: Complex, closed: BoolArray, badly: IntArray, ids: AnyArray) -> list[str]:
     notes = ["a net flux is positive the way the faces are turned, outward for a shell turned outward"]
+    if _is_tilted_plane(K):
+        notes.append(
+            "all points lie in one plane, but not at one z: turn the mesh into the plane z = constant to have every "
+            "face balanced across its edges"
+        )
     volume, doubt = shell_volumes(K)
     inward = np.flatnonzero(closed & (volume < -doubt))
     if len(inward):
@@ -169,4 +187,6 @@ def _verdict(shells: dict[str, AnyArray], n_closed: int, unit: str | None) -> st
     if bad:
         found = ", ".join(beyond_limit(shells, unit, "out of"))
         return f"{bad} of {counted(n_closed, 'closed shell')} not balanced: {found}"
+    if not np.equal(shells["holds"][np.isfinite(shells["limit"])], True).all():
+        return f"whether the {counted(n_closed, 'closed shell')} balances is not decided{TOO_WIDE}"
     return f"every closed shell balances within the limit ({n_closed} in all)"

@@ -8,9 +8,15 @@ import numpy as np
 from dec.arrays import AnyArray
 from dec.findings import Finding
 
-__all__ = ["beyond_limit", "counted", "measured", "renamed", "whole_rows", "worst"]
+__all__ = [
+    "TOO_WIDE", "all_hold", "beyond_limit", "counted", "measured", "n_undecided", "renamed", "whole_rows", "worst",
+]  # fmt: skip
 
 _NAMED = 3
+TOO_WIDE = (
+    ": the estimated error of the integration rule is no small part of the field there (a wrong value, noise, or too "
+    "coarse a mesh); give a limit to decide"
+)
 
 
 def counted(number: int, what: str) -> str:
@@ -21,6 +27,20 @@ def counted(number: int, what: str) -> str:
 def measured(value: float, unit: str | None) -> str:
     """A value to four digits with its unit, where there is one."""
     return f"{value:.4g}{f' {unit}' if unit else ''}"
+
+
+def n_undecided(tables: Mapping[str, Mapping[str, AnyArray]]) -> int:
+    """How many rows of tables have a limit and yet are neither within nor beyond it."""
+    with_gaps = (table for table in tables.values() if table["holds"].dtype == object)
+    rows = (row for table in with_gaps for row in zip(table["limit"], table["holds"], strict=True))
+    return sum(int(np.isfinite(limit)) for limit, holds in rows if holds is None)
+
+
+def all_hold(tables: Mapping[str, Mapping[str, AnyArray]]) -> bool | None:
+    """Whether all rows of tables hold: False with one that does not, else None with one that is not decided."""
+    if any(np.equal(table["holds"], False).any() for table in tables.values()):
+        return False
+    return None if n_undecided(tables) else True
 
 
 def worst(table: Mapping[str, AnyArray], unit: str | None, joint: str) -> str:

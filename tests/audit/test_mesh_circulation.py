@@ -1,6 +1,7 @@
 """The loop law on meshes: every face, every boundary loop and every hole, with known values and plain-Python sums."""
 
 import json
+import math
 from collections.abc import Callable
 from fractions import Fraction
 
@@ -253,6 +254,13 @@ def polygon_fields(draw: Callable) -> tuple[Complex, np.ndarray]:
     return K, random.normal(size=places.shape)
 
 
+def straight(K: Complex, field: np.ndarray, e: int) -> float:
+    """Length of an edge times the field's mean magnitude at its ends, or a tenth of its median if that is more."""
+    size = np.hypot(*field.T)
+    length = math.dist(K.points[K.tail[e]], K.points[K.head[e]])
+    return length * max((size[K.tail[e]] + size[K.head[e]]) / 2, 0.1 * float(np.median(size)))
+
+
 @given(polygon_fields())
 @settings(max_examples=50, deadline=None)
 def test_sums_round_faces_are_those_of_plain_python(case: tuple[Complex, np.ndarray]):
@@ -266,7 +274,9 @@ def test_sums_round_faces_are_those_of_plain_python(case: tuple[Complex, np.ndar
         edges = edges_of(K, face["id"])
         allowed = sum(float(error[e]) for e in edges) + len(edges) * 2.0**-52 * gross
         assert face["limit"] == pytest.approx(allowed, rel=1e-12)
-        assert face["holds"] == (abs(face["value"]) <= face["limit"])
+        within = abs(face["value"]) <= face["limit"]
+        unclear = any(error[e] > 0.125 * straight(K, field, e) for e in edges)
+        assert face["holds"] is (None if within and unclear else within)
     assert len(audit.table("holes")) == K.betti()[1]
     assert all(w["left"] == w["right"] for w in audit.extra["whole"])
 

@@ -8,8 +8,9 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from dec.audit.questions import balance
+from dec.audit.questions import balance, loops
 from dec.calculus.complex import Complex, grid
+from dec.calculus.dataset import Dataset, Field
 
 from .mesh_shapes import dataset, noted, row, sample, with_field
 
@@ -224,3 +225,24 @@ def left_edges(K: Complex) -> list[int]:
 def near(K: Complex, vertex: int) -> set[int]:
     tetra = K.solids["tetra"]
     return set(tetra[(tetra == vertex).any(axis=1)].ravel().tolist())
+
+
+@pytest.mark.parametrize("name", ["annulus", "wing", "elbow", "bracket"])
+def test_noise_is_never_found_to_balance_or_close(name: str):
+    part = sample(f"{name}.vtu")
+    noise = np.random.default_rng(5).standard_normal(part.complex.points.shape)
+    data = Dataset(part.complex, fields={"U": {"vertices": Field("U", "vertices", noise)}})
+    assert balance(data, field="U").holds is not True
+    assert loops(data, field="U").holds is not True
+
+
+@pytest.mark.parametrize("size", [1.0, 30.0, 1e6])
+def test_one_wrong_vector_in_a_linear_field_on_a_solid_is_not_found_to_balance(size: float):
+    part = sample("elbow.vtu")
+    field = part.field("flow").values.copy()
+    field[277] += size * np.abs(field).max()
+    data = Dataset(part.complex, fields={"U": {"vertices": Field("U", "vertices", field)}})
+    audit = balance(data, field="U")
+    assert audit.holds is not True
+    assert "not decided" in audit.extra["verdict"] or "not balanced" in audit.extra["verdict"]
+    assert balance(data, field="U", limit="1%").holds is False

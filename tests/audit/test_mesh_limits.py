@@ -69,7 +69,9 @@ def test_a_row_that_is_not_judged_has_neither_limit_nor_verdict():
 def test_a_limit_far_wider_than_usual_is_told_with_its_place():
     share = [1e-6] * 9 + [0.3]
     (note,) = Limit("rule").doubts(sums([0.0] * 10, [1.0] * 10, share), "cell")
-    assert note.startswith("the limit is widest at cell 9, 30 % of gross, the median being 0.0001 %")
+    assert note.startswith(
+        "the limit is widest at cell 9, 30 % of what the field there could give, the median being 0.0001 %"
+    )
     assert Limit("rule").doubts(sums([0.0] * 10, [1.0] * 10, [0.3] * 10), "cell") == []
     assert Limit("rule").doubts(sums([0.0] * 10, [0.0] * 10, [0.0] * 10), "cell") == []
 

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from dec.audit.questions import balance
-from dec.calculus.complex import Complex
+from dec.calculus.complex import Complex, grid
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError
 
@@ -145,3 +145,12 @@ def test_named_face_groups_are_listed_and_judged_where_they_close():
     near_box = row(audit, "regions", "near")
     assert near_box["holds"] is False
     assert near_box["value"] == pytest.approx(24)
+
+
+def test_a_mesh_in_a_tilted_plane_is_told_where_its_faces_would_balance():
+    flat = grid((4, 4))
+    points = np.stack([flat.points[:, 0], flat.points[:, 1], flat.points[:, 0]], axis=1)
+    K = Complex.from_faces(flat.faces.flat.reshape(-1, 4), points=points)
+    audit = balance(dataset(K, np.ones_like(points)), field="U")
+    assert audit.holds is None
+    assert any("turn the mesh into the plane" in note for note in audit.notes)
