@@ -42,8 +42,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except KeyboardInterrupt:
         return _fail(INTERRUPTED, "interrupted", "interrupted; nothing was written", as_json)
     except BrokenPipeError:
-        # whoever read the output has left: point stdout elsewhere so that closing it stays quiet
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        _to_nowhere()  # whoever read the output has left
         return OK
     except MemoryError:
         return _fail(
@@ -115,7 +114,7 @@ def _solve(options: argparse.Namespace) -> int:
         found["inputs"] = [{"name": i.name, "sha256": i.sha256, "bytes": i.bytes} for i in data.inputs]
         found["asked"]["source"] = options.source
     if options.output == "-":
-        sys.stdout.buffer.write(flow_bytes(solution))
+        _write(flow_bytes(solution))
         return OK
     if options.output:
         write_atomically(options.output, flow_bytes(solution), force=options.force)
@@ -145,7 +144,7 @@ def _conclude(options: argparse.Namespace, audit: "Audit") -> int:
     if options.output == "-":
         from dec.audit.output import result_bytes
 
-        sys.stdout.buffer.write(result_bytes(audit, "result.csv"))
+        _write(result_bytes(audit, "result.csv"))
     else:
         _show(options, found, audit_view)
     if audit.holds is None:
@@ -168,6 +167,12 @@ def _both(data: "Dataset", column: str, names: list[str]) -> list[Any]:
 
 
 def _refuse_unfit(options: argparse.Namespace, network: Iterable[str]) -> None:
+    if options.output == "-" and options.json:
+        message = "give -o - or --json, not both: each is the whole of standard output"
+        raise _UsageError(message)
+    if options.sd is not None and options.limit is not None:
+        message = "give --sd or --limit, not both: with standard deviations the chi-square test decides"
+        raise _UsageError(message)
     if (options.value is None) == (options.field is None):
         message = "give --value COLUMN for a network, or --field NAME for a mesh"
         raise _UsageError(message)
@@ -188,20 +193,59 @@ def _show(options: argparse.Namespace, found: dict[str, Any], view: Callable[[di
 
 
 def _print_json(found: dict[str, Any]) -> None:
-    sys.stdout.write(json.dumps(found, ensure_ascii=False, allow_nan=False) + "\n")
+    plain = not _is_unicode()
+    _write((json.dumps(found, ensure_ascii=plain, allow_nan=False) + "\n").encode(_encoding()))
 
 
 def _print(parts: Iterable[Any]) -> None:
     from rich.console import Console
 
-    is_terminal = sys.stdout.isatty()
+    if sys.stdout is not None and sys.stdout.isatty() and _is_unicode():
+        console = Console(highlight=False, markup=False, emoji=False)
+        for part in parts:
+            console.print(part)
+        return
     text = io.StringIO()
-    out = sys.stdout if is_terminal else text
-    console = Console(file=out, width=None if is_terminal else 80, highlight=False, markup=False, emoji=False)
+    console = Console(file=text, width=80, highlight=False, markup=False, emoji=False)
     for part in parts:
         console.print(part)
-    sys.stdout.write("".join(f"{line.rstrip()}\n" for line in text.getvalue().splitlines()))
-    sys.stdout.flush()
+    lines = "".join(f"{line.rstrip()}\n" for line in text.getvalue().splitlines())
+    if not _is_unicode():
+        lines = lines.replace("\N{BOX DRAWINGS LIGHT HORIZONTAL}", "-")
+    _write(lines.encode(_encoding(), "backslashreplace"))
+
+
+def _encoding() -> str:
+    return getattr(sys.stdout, "encoding", None) or "utf-8"
+
+
+def _is_unicode() -> bool:
+    return _encoding().lower().replace("-", "").startswith("utf")
+
+
+def _write(data: bytes) -> None:
+    """Write to standard output, all or an error; tests may stand a text stream in for it."""
+    if sys.stdout is None:
+        message = "standard output is closed; open it, or use --quiet for the exit code alone"
+        raise OutputError(message)
+    try:
+        if hasattr(sys.stdout, "buffer"):
+            sys.stdout.flush()
+            sys.stdout.buffer.write(data)
+        else:
+            sys.stdout.write(data.decode(_encoding()))
+        sys.stdout.flush()
+    except BrokenPipeError:
+        raise
+    except OSError as error:
+        message = f"standard output cannot be written ({error.strerror})"
+        _to_nowhere()
+        raise OutputError(message) from None
+
+
+def _to_nowhere() -> None:
+    # what is left in the buffer would fail again when the interpreter closes the stream
+    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
 @contextmanager
@@ -335,7 +379,9 @@ def _audited(verb: argparse.ArgumentParser) -> None:
     )
     verb.add_argument("--field", metavar="NAME", help="mesh: vector field to audit")
     verb.add_argument("--at", choices=("vertices", "cells"), help="mesh: which field, where both have the name")
-    verb.add_argument("--alpha", type=float, default=0.05, metavar="P", help="false-alarm rate of the test (0.05)")
+    verb.add_argument(
+        "--alpha", type=_probability, default=0.05, metavar="P", help="false-alarm rate of the test (0.05)"
+    )
     verb.add_argument(
         "--limit",
         metavar="LIMIT",
@@ -346,6 +392,14 @@ def _audited(verb: argparse.ArgumentParser) -> None:
         "-o", dest="output", metavar="FILE", help="write the adjusted table (csv) or mesh (vtu); - prints the table"
     )
     _common(verb)
+
+
+def _probability(text: str) -> float:
+    number = float(text)
+    if not 0 < number < 1:
+        message = f"must lie between 0 and 1, got {text}"
+        raise argparse.ArgumentTypeError(message)
+    return number
 
 
 def _common(verb: argparse.ArgumentParser) -> None:

@@ -28,6 +28,13 @@ def test_whole_numbers_of_any_width_and_byte_order_become_native_int64(dtype):
     assert array.tolist() == [1, 2]
 
 
+def test_the_largest_integer_of_64_bits_is_kept_whether_it_came_signed_or_not():
+    for dtype in (np.int64, np.uint64):
+        given = np.array([2**63 - 1], dtype)
+        assert index_array(given, "x").tolist() == number_array(given, "x").tolist() == [2**63 - 1]
+        assert number_array(given, "x").dtype == np.int64
+
+
 @pytest.mark.parametrize("empty", [[], (), np.array([]), np.array([], np.uint8)])
 def test_an_empty_list_is_one_of_whole_numbers(empty):
     assert index_array(empty, "x").dtype == np.int64

@@ -1,6 +1,7 @@
 """Is the network or mesh sound, and what can be checked with it?"""
 
 import json
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
@@ -9,17 +10,20 @@ from typing import Any
 import numpy as np
 
 from dec.arrays import IntArray
+from dec.calculus.columns import Column
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError
 from dec.findings import Finding
 from dec.geometry.shape import check_shape
+from dec.topology.edges import unique_pairs
 from dec.topology.graphs import bridges
 
 __all__ = ["Condition", "check"]
 
 SCHEMA = "dec.check/1"
 _NAMED = 5
+_LIKE_NUMBER = re.compile(r"\s*[+-]?[.,]?[0-9]")
 _CELLS = ("vertices", "edges", "faces", "cells")
 
 
@@ -60,6 +64,7 @@ class Condition:
             "components": K.n_components,
             "manifold": K.is_manifold,
             "orientable": K.is_orientable,
+            "closed": K.dim > 1 and not bool((K.incidences.uses == 1).any()),
             "boundary_loops": len(K.boundary_loops()) if K.dim == 2 else None,
             "findings": [
                 {
@@ -113,24 +118,42 @@ def check(data: Dataset | Complex) -> Condition:
     findings = list(K.check())
     if K.points is not None and K.dim > 1:
         findings += check_shape(K)
+    findings += [found for columns in data.columns.values() for found in _number_findings(columns)]
     facts = _network_facts(data) if K.dim < 2 else _mesh_facts(data)
     return Condition(data, tuple(findings), facts)
+
+
+def _number_findings(columns: Mapping[str, Column]) -> list[Finding]:
+    """Return one finding for every column that is written like numbers and yet cannot be read as such."""
+    findings = []
+    for name, column in columns.items():
+        if name in _STRUCTURE - {"x", "y", "z"} or column.cells.dtype != object:
+            continue
+        numeric = sum(bool(_LIKE_NUMBER.match(cell)) for cell in column.cells)
+        if 2 * numeric <= int(column.present().sum()):
+            continue
+        try:
+            column.numbers()
+        except InputError as error:
+            findings.append(Finding(f"column {name} can be read as numbers", False, numeric, None, (str(error),)))
+    return findings
 
 
 def _network_facts(data: Dataset) -> dict[str, str]:
     K = data.complex
     alone = np.flatnonzero(bridges(K.tail, K.head, K.counts[0]))
     loops = K.counts[1] - K.counts[0] + K.n_components
-    checked = f"{len(alone)} edges on no loop ({_some(K, alone)})" if len(alone) else "every edge lies on a loop"
+    checked = f"{_edges(len(alone))} on no loop ({_some(K, alone)})" if len(alone) else "every edge lies on a loop"
     facts = {"loops": f"{loops} independent loop{'' if loops == 1 else 's'}; {checked}"}
-    ends = np.sort(np.stack([K.tail, K.head], axis=1), axis=1)
-    proper = ends[ends[:, 0] != ends[:, 1]]
-    parallel = len(proper) - len(np.unique(proper, axis=0))
+    low, high = np.minimum(K.tail, K.head), np.maximum(K.tail, K.head)
+    proper = low != high
+    distinct, _, _ = unique_pairs(low[proper], high[proper], K.counts[0])
+    parallel = int(proper.sum()) - len(distinct)
     if parallel:
-        facts["parallel"] = f"{parallel} edges beside another edge of the same two vertices"
+        facts["parallel"] = f"{_edges(parallel)} beside another edge of the same two vertices"
     same = np.flatnonzero(K.tail == K.head)
     if len(same):
-        facts["self"] = f"{len(same)} edges start and end at one vertex ({_some(K, same)})"
+        facts["self"] = f"{_edges(len(same))} with both ends at one vertex ({_some(K, same)})"
     for degree, what in ((1, "edges"), (0, "vertices")):
         described = [
             _column_fact(column) for name, column in data.columns.get(degree, {}).items() if name not in _STRUCTURE
@@ -169,6 +192,10 @@ def _mesh_facts(data: Dataset) -> dict[str, str]:
     if data.regions:
         facts["regions"] = ", ".join(f"{r.name} ({len(r.cells)} {_CELLS[r.degree]})" for r in data.regions.values())
     return facts
+
+
+def _edges(count: int) -> str:
+    return f"{count} edge{'' if count == 1 else 's'}"
 
 
 def _some(K: Complex, edges: IntArray) -> str:

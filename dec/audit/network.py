@@ -76,7 +76,11 @@ def audit_differences(
     verdict = judged(adjustment, limits, found.misclosure, found.places, with_sd=readings.sd is not None)
     notes = general_notes(network, readings, adjustment)
     if len(loops) < len(found.chords):
-        notes.append(f"only the worst {len(loops)} of {len(found.chords)} loops are listed; all were checked")
+        notes.append(
+            f"of {len(found.chords)} loops the {len(loops)} with the largest misclosures are listed; all were checked"
+        )
+    if limit is not None and len(found.chords) > 1:
+        notes.append("the limit is held against the loops of one basis; every other loop is a sum of these")
     notes += self_loop_notes(network, balance=False) + datum_notes(network, held, adjustment.part)
     n, nothing = network.counts[0], np.full(network.counts[0], np.nan)
     rows = {

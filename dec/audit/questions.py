@@ -72,6 +72,7 @@ def balance(
     (True, 1, [5.1, 5.1])
     """
     _refuse_mixed(data, value, field)
+    _refuse_unfit(field, at, sd=sd, open=None if isinstance(open, tuple | list) and not open else open, supply=supply)
     if field is not None:
         from dec.audit.mesh import audit_flux
 
@@ -129,12 +130,24 @@ def loops(
     (True, 0.03, 3.0)
     """
     _refuse_mixed(data, value, field)
+    _refuse_unfit(field, at, sd=sd, fixed=fixed)
     if field is not None:
         from dec.audit.mesh import audit_circulation
 
         return audit_circulation(data, field, at, limit, unit)
     assert value is not None
     return audit_differences(data, value, sd, fixed, alpha, limit, unit)
+
+
+def _refuse_unfit(field: str | None, at: str | None, **network: object) -> None:
+    """Refuse what would be ignored: network words beside a field, and a place beside a column."""
+    if field is None and at is not None:
+        message = f"at belongs to a mesh field, not to a network column, got {at!r}"
+        raise InputError(message)
+    given = [name for name, value in network.items() if field is not None and value is not None]
+    if given:
+        message = f"{given[0]} belongs to a network column, not to a mesh field; leave it out"
+        raise InputError(message)
 
 
 def _refuse_mixed(data: Dataset, value: str | None, field: str | None) -> None:

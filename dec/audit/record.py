@@ -144,6 +144,9 @@ class Audit:
         }
         for name, columns in self.tables.items():
             result[name] = _rows(columns)
+        if not network:
+            for name in ("cells" if self.data.complex.dim == 3 else "faces", "boundaries", "holes"):
+                result.setdefault(name, None)
         if network:
             result["loops"] = [{key: _plain(value) for key, value in loop.items()} for loop in self.loops]
         result["suspects"] = [
@@ -175,7 +178,9 @@ class Audit:
         verdict = {True: "holds", False: "does not hold", None: open_end}[self.holds]
         figure = "" if self.chi_square is None or not self.dof else f", chi-square {self.chi_square:.4g}"
         limit = "" if self.limit is None or not self.dof else f", limit {self.limit:.4g}"
-        return f"<Audit {self.law}: {verdict}; {self.dof} independent checks{figure}{limit}>"
+        return (
+            f"<Audit {self.law}: {verdict}; {self.dof} independent check{'' if self.dof == 1 else 's'}{figure}{limit}>"
+        )
 
     def _repr_html_(self) -> str:
         rows = [("law", self.law), ("verdict", repr(self)[1:-1].split(": ", 1)[1])]

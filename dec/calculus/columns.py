@@ -245,7 +245,7 @@ def cells_of(series: "pd.Series[Any]", *, is_id: bool) -> AnyArray:
     if not is_id and kind == "f":
         if getattr(series.dtype, "itemsize", 8) < 8:
             return series.to_numpy(dtype=np.float32, na_value=np.nan).astype(str).astype(np.float64)
-        return series.to_numpy(dtype=np.float64, na_value=np.nan)
+        return series.to_numpy(dtype=np.float64, na_value=np.nan, copy=True)
     if not is_id and kind in "iu" and not blank.any() and (kind == "i" or not len(series) or series.max() < 2**63):
-        return series.to_numpy(dtype=np.int64)
+        return series.to_numpy(dtype=np.int64, copy=True)
     return np.array(["" if b else str(v) for b, v in zip(blank, series, strict=True)], dtype=object)

@@ -3,7 +3,6 @@
 import difflib
 from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
-from types import MappingProxyType
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -139,7 +138,16 @@ class Dataset:
         complex_ = Complex.from_edges(
             tail, head, len(vertex_ids), vertex_ids=vertex_ids, edge_ids=edge_ids, points=points
         )
-        return cls(complex_, MappingProxyType({0: nodes or {}, 1: edges}))
+        return cls(complex_, {0: nodes or {}, 1: edges})
+
+    def __repr__(self) -> str:
+        parts = [f"{self.complex!r}"[1:-1]]
+        for degree, names in self.columns.items():
+            if names:
+                parts.append(f"columns on {_DEGREE_NAMES[degree]}: {', '.join(names)}")
+        if self.fields:
+            parts.append(f"fields: {', '.join(self.fields)}")
+        return f"<Dataset of {'; '.join(parts)}>"
 
     def column(self, name: str, degree: int) -> Column:
         """The named column of a degree.
@@ -152,6 +160,9 @@ class Dataset:
         known = self.columns.get(degree, {})
         if name in known:
             return known[name]
+        if degree == 0 and not known:
+            message = f"no column {name!r} among the vertices: there is no node table; give one (nodes=, --nodes FILE)"
+            raise InputError(message)
         message = f"no column {name!r} among the {_DEGREE_NAMES[degree]}; {_offer(name, list(known))}"
         raise InputError(message)
 

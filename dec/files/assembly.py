@@ -163,7 +163,8 @@ def _flattened(parts: MeshParts, order: IntArray, notes: list[str]) -> tuple[Flo
     points = parts.points
     fields = [Field(name, "vertices", values) for name, values in parts.point_data.items()]
     fields += [Field(name, "cells", values[order]) for name, values in parts.cell_data.items()]
-    if points.shape[1] == 3 and not points[:, 2].any():
+    leaves_plane = any(f.values.ndim == 2 and f.values.shape[1] == 3 and f.values[:, 2].any() for f in fields)
+    if points.shape[1] == 3 and not points[:, 2].any() and not leaves_plane:
         points = points[:, :2].copy()
         padded = [_is_padded(field.values) for field in fields]
         fields = [

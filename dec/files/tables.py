@@ -171,10 +171,7 @@ def read_parquet(source: Source) -> tuple[dict[str, Column], tuple[str, ...]]:
     try:
         frame = pd.read_parquet(io.BytesIO(source.data), engine="pyarrow")
     except ImportError:
-        message = (
-            f"{source.name}: Parquet needs pyarrow; "
-            "install it with pip install 'dec[parquet]', or save the table as CSV"
-        )
+        message = f"{source.name}: Parquet needs pyarrow; install pyarrow, or save the table as CSV"
         raise InputError(message) from None
     except Exception as error:
         reason = " ".join(str(error).split())[:200]

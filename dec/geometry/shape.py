@@ -49,7 +49,7 @@ def check_shape(K: Complex) -> list[Finding]:
     if K.dim == 3:
         findings.append(_cells(K))
     if K.dim == 2 and not is_flat(K):
-        findings.append(_shells(K))
+        findings += _shells(K)
     return findings
 
 
@@ -86,9 +86,11 @@ def _cells(K: Complex) -> Finding:
     return _finding("every cell has positive volume", wrong)
 
 
-def _shells(K: Complex) -> Finding:
+def _shells(K: Complex) -> list[Finding]:
     label = K.sheets.label
     volumes, doubt = shell_volumes(K)
+    if np.isnan(volumes).all():  # no closed surface that is turned alike throughout
+        return []
     inward = np.flatnonzero(volumes < -doubt)
     lowest = np.full(K.sheets.count, len(label))
     np.minimum.at(lowest, label, np.arange(len(label)))
@@ -101,7 +103,7 @@ def _shells(K: Complex) -> Finding:
         around[shell] = False
         if not around.any() or _turns_about(K, place, around[label]) < 0.5:
             wrong.append(int(lowest[shell]))
-    return _finding("closed surfaces are turned outward", np.array(sorted(wrong), dtype=np.int64))
+    return [_finding("closed surfaces are turned outward", np.array(sorted(wrong), dtype=np.int64))]
 
 
 def shell_volumes(K: Complex) -> tuple[FloatArray, FloatArray]:

@@ -198,7 +198,7 @@ def _kind(result: Mapping[str, Any]) -> str:
     manifold = "manifold" if result["manifold"] else "not a manifold"
     sides = {True: "orientable", False: "not orientable", None: "orientation not defined"}[result["orientable"]]
     loops = result["boundary_loops"]
-    edge = "closed" if loops == 0 else ("" if loops is None else _plural(loops, "boundary loop"))
+    edge = "closed" if result["closed"] else ("" if not loops else _plural(loops, "boundary loop"))
     return ", ".join(part for part in (manifold, sides, edge) if part)
 
 

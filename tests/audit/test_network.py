@@ -282,10 +282,10 @@ def test_ids_are_text_everywhere_and_hostile_ones_do_no_harm_in_html():
 
 def test_repr_tells_law_verdict_checks_and_figures():
     assert repr(loops(triangle("1", "1", "-2"), "y", sd=1)) == (
-        "<Audit loop: holds; 1 independent checks, chi-square 0, limit 3.841>"
+        "<Audit loop: holds; 1 independent check, chi-square 0, limit 3.841>"
     )
     assert repr(balance(chain("1", "2"), "y", open=["S", "T"])) == (
-        "<Audit balance: does not hold; 1 independent checks, limit 0>"
+        "<Audit balance: does not hold; 1 independent check, limit 0>"
     )
 
 
@@ -304,7 +304,7 @@ def test_loops_come_worst_first_and_a_long_list_is_cut_but_checked_whole(monkeyp
     monkeypatch.setattr(dec.audit.loop_rows, "_MOST_LEGS", 5)
     cut = loops(network(rows), "y", sd=1)
     assert [abs(loop["misclosure"]) for loop in cut.loops] == [9, 4]
-    assert "only the worst 2 of 5 loops are listed; all were checked" in cut.notes
+    assert "of 5 loops the 2 with the largest misclosures are listed; all were checked" in cut.notes
     assert cut.chi_square == audit.chi_square
     monkeypatch.setattr(dec.audit.loop_rows, "_MOST_LOOPS", 3)
     monkeypatch.setattr(dec.audit.loop_rows, "_MOST_LEGS", 1)

@@ -108,7 +108,7 @@ def test_a_column_that_is_not_there_is_refused_with_the_nearest_name():
     net = frames({"from": ["A"], "to": ["B"], "flow": [1]})
     with pytest.raises(InputError, match=r"no column 'flwo' among the edges; .* did you mean 'flow'"):
         net.column("flwo", 1)
-    with pytest.raises(InputError, match="no column 'h' among the vertices; there are none"):
+    with pytest.raises(InputError, match="no column 'h' among the vertices: there is no node table"):
         net.column("h", 0)
     with pytest.raises(InputError, match="no column 5 among the edges"):
         net.column(5, 1)

@@ -293,3 +293,52 @@ def test_solve_refuses_a_surplus_and_a_missing_source(run, divider):
     code, out, err = run(*words)
     assert (code, out) == (4, "")
     assert "0.5" in err
+
+
+def test_output_that_the_encoding_cannot_show_is_escaped(junction):
+    (junction / "e.csv").write_text("from,to,flow\nÄ,J,1\nJ,T,1\n", encoding="utf-8")
+    words = [sys.executable, "-m", "dec", "balance", str(junction / "e.csv"), "--value", "flow", "--open", "T"]
+    for encoding in ("ascii", "cp1252"):
+        done = subprocess.run(
+            words, capture_output=True, check=False, env={**os.environ, "PYTHONIOENCODING": encoding}, timeout=120
+        )
+        assert done.returncode == 1
+        assert done.stderr == b""
+        assert b"----" in done.stdout
+        assert (b"\\xc4" if encoding == "ascii" else "Ä".encode("cp1252")) in done.stdout
+
+
+@pytest.mark.skipif(not Path("/dev/full").exists(), reason="a device of Linux")
+def test_a_full_or_closed_standard_output_exits_5_with_one_line(junction):
+    line = f"{sys.executable} -m dec balance {junction / 'pipes.csv'} --value flow"
+    for target in (">/dev/full", ">&-"):
+        done = subprocess.run(["sh", "-c", f"{line} {target}"], capture_output=True, check=False, timeout=120)
+        assert done.returncode == 5
+        assert done.stderr.startswith(b"dec: standard output")
+        assert done.stderr.count(b"\n") == 1
+
+
+def test_wrong_use_is_told_before_anything_is_read(run):
+    for words in (
+        ("balance", "none.csv", "--value", "f", "--sd", "1", "--limit", "1"),
+        ("balance", "none.csv", "--value", "f", "--alpha", "2"),
+        ("balance", "none.csv", "--value", "f", "-o", "-", "--json"),
+    ):
+        assert run(*words)[0] == 2
+
+
+def test_a_table_with_decimal_commas_is_not_sound(run, tmp_path):
+    (tmp_path / "e.csv").write_text("from;to;flow;name\nA;B;1,5;north\nB;A;2,5;south\n")
+    code, out, _ = run("check", tmp_path / "e.csv", "--json")
+    (failed,) = [f for f in json.loads(out)["findings"] if not f["holds"]]
+    assert code == 1
+    assert failed["name"] == "column flow can be read as numbers"
+    assert "e.csv line 2" in failed["where"][0]
+    assert run("check", tmp_path / "e.csv", "--decimal", ",")[0] == 0
+
+
+def test_an_open_surface_whose_rim_does_not_close_is_not_called_closed(run, tmp_path):
+    (tmp_path / "three.off").write_text("OFF\n5 3 0\n0 0 0\n1 0 0\n0 1 0\n0 0 1\n0 -1 0\n3 0 1 2\n3 0 1 3\n3 0 1 4\n")
+    code, out, _ = run("check", tmp_path / "three.off")
+    assert code == 1
+    assert "closed" not in out

@@ -19,14 +19,14 @@ def parts(points: np.ndarray, cells: list[tuple[int, list[int]]], **more: object
 
 
 def test_a_mesh_with_every_z_zero_is_flat_and_so_are_its_padded_fields():
-    fields = {"U": np.array([[1.0, 2, 0]] * 4), "W": np.array([[1.0, 2, 3]] * 4), "s": np.ones((4, 1))}
+    fields = {"U": np.array([[1.0, 2, 0]] * 4), "W": np.array([[1.0, 2]] * 4), "s": np.ones((4, 1))}
     flat = assemble(
         parts(SQUARE, [(9, [0, 1, 2, 3])], point_data=fields, cell_data={"V": np.array([[1.0, 1, 0]])}), FILE
     )
     assert flat.complex.points.shape == (4, 2)
     assert {name: flat.field(name).values.shape for name in flat.fields} == {
         "U": (4, 2),
-        "W": (4, 3),
+        "W": (4, 2),
         "s": (4, 1),
         "V": (1, 2),
     }
@@ -41,6 +41,13 @@ def test_a_mesh_that_leaves_the_plane_keeps_three_components():
     assert tilted.complex.points.shape == (4, 3)
     assert tilted.field("U").values.shape == (4, 3)
     assert tilted.notes == ()
+
+
+def test_a_mesh_at_z_zero_keeps_three_coordinates_for_a_field_that_leaves_the_plane():
+    fields = {"U": np.array([[1.0, 2, 0]] * 4), "W": np.array([[1.0, 2, 3]] * 4)}
+    slice_ = assemble(parts(SQUARE, [(9, [0, 1, 2, 3])], point_data=fields), FILE)
+    assert slice_.complex.points.shape == (4, 3)
+    assert slice_.field("U").values.shape == slice_.field("W").values.shape == (4, 3)
 
 
 def test_heights_that_cancel_are_not_flat():
