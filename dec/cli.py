@@ -132,19 +132,19 @@ def _demo(options: argparse.Namespace) -> int:
 
 
 def _conclude(options: argparse.Namespace, audit: "Audit") -> int:
+    from dec.audit.output import result_bytes, vertex_bytes
+    from dec.files.writing import write_atomically
     from dec.report.terminal import audit_view
 
     with _patience("writing", options):
         found = audit.to_dict()
+        made = result_bytes(audit, "result.csv" if options.output == "-" else options.output) if options.output else b""
+        if options.vertices:
+            write_atomically(options.vertices, vertex_bytes(audit), force=options.force)
         if options.output and options.output != "-":
-            from dec.audit.output import result_bytes
-            from dec.files.writing import write_atomically
-
-            write_atomically(options.output, result_bytes(audit, options.output), force=options.force)
+            write_atomically(options.output, made, force=options.force)
     if options.output == "-":
-        from dec.audit.output import result_bytes
-
-        _write(result_bytes(audit, "result.csv"))
+        _write(made)
     else:
         _show(options, found, audit_view)
     if audit.holds is None:
@@ -178,6 +178,9 @@ def _refuse_unfit(options: argparse.Namespace, network: Iterable[str]) -> None:
         raise _UsageError(message)
     if options.value is not None and options.at is not None:
         message = "--at belongs to a mesh field, not to --value"
+        raise _UsageError(message)
+    if options.field is not None and options.vertices is not None:
+        message = "--vertices belongs to a network column, not to --field; -o FILE.vtu writes the mesh"
         raise _UsageError(message)
     for name in network:
         if options.field is not None and getattr(options, name):
@@ -391,6 +394,7 @@ def _audited(verb: argparse.ArgumentParser) -> None:
     verb.add_argument(
         "-o", dest="output", metavar="FILE", help="write the adjusted table (csv) or mesh (vtu); - prints the table"
     )
+    verb.add_argument("--vertices", metavar="FILE", help="network: write the table of vertices (csv)")
     _common(verb)
 
 

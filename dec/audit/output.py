@@ -12,7 +12,7 @@ from dec.files.tables_out import csv_bytes
 from dec.files.vtu import vtu_bytes
 from dec.solvers.solution import Solution
 
-__all__ = ["flow_bytes", "result_bytes"]
+__all__ = ["flow_bytes", "result_bytes", "vertex_bytes"]
 
 
 def result_bytes(audit: Audit, name: str) -> bytes:
@@ -56,6 +56,22 @@ def flow_bytes(solution: Solution) -> bytes:
         "potential_from": potential[K.tail], "potential_to": potential[K.head],
     }  # fmt: skip
     return csv_bytes(columns)
+
+
+def vertex_bytes(audit: Audit) -> bytes:
+    """The vertices of a network audit as the bytes of a CSV table; columns without an entry are left out.
+
+    Raises
+    ------
+    InputError
+        If the audit is one of a mesh.
+    """
+    if "vertices" not in audit.tables:
+        message = "--vertices: an audit of a mesh has no table of vertices; use -o FILE.vtu"
+        raise InputError(message)
+    table = audit.tables["vertices"]
+    kept = {name: column for name, column in table.items() if column.dtype == object or not np.isnan(column).all()}
+    return csv_bytes(kept)
 
 
 def _edge_columns(audit: Audit) -> dict[str, AnyArray]:

@@ -94,7 +94,7 @@ def solve_view(result: Mapping[str, Any], *, why: bool = False) -> Iterator[Rend
         for row in sorted(rows, key=lambda r: -abs(r[key]))[:_ROWS]:
             table.add_row(visible(row["id"]), number(row[key]))
         yield table
-        yield from _more(len(rows))
+        yield from _more(len(rows), "--json or -o FILE")
     yield from _remarks("note", result["notes"])
     yield from _remarks("not shown", result["not_shown"])
 
@@ -122,6 +122,8 @@ def _tables(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         yield from _worst("vertices", "in - out + supply", rows, "residual")
     elif "loops" in result:
         yield from _loops(result)
+        if result["dof"]:
+            yield from _potentials(result["vertices"])
     for name in ("faces", "cells", "shells", "regions", "boundaries", "holes"):
         if result.get(name):
             yield from _worst_cells(name, result[name])
@@ -152,7 +154,7 @@ def _worst(title: str, heading: str, rows: Sequence[Mapping[str, Any]], key: str
     for row in rows[:_ROWS]:
         table.add_row(visible(row["id"]), number(row[key]), number(row["sd"], 3), number(row["statistic"], 3))
     yield table
-    yield from _more(len(rows))
+    yield from _more(len(rows), "--json or --vertices FILE")
 
 
 def _loops(result: Mapping[str, Any]) -> Iterator[RenderableType]:
@@ -170,9 +172,19 @@ def _loops(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         legs = " ".join(f"{'+' if sign > 0 else '-'}{visible(name)}" for name, sign in loop["legs"][:6])
         more = f" ... {len(loop['legs'])} legs" if len(loop["legs"]) > 6 else ""
         mark = Text(_MARK[loop["holds"]], _STYLE[loop["holds"]])
-        table.add_row(visible(loop["id"]), number(loop["misclosure"]), number(loop["limit"], 4), mark, legs + more)
+        held = f", {visible(loop['held'][0])} to {visible(loop['held'][1])} held" if loop["held"] else ""
+        row = (number(loop["misclosure"]), number(loop["limit"], 4), mark, legs + more + held)
+        table.add_row(visible(loop["id"]), *row)
     yield table
-    yield from _more(len(result["loops"]))
+    yield from _more(len(result["loops"]), "--json")
+
+
+def _potentials(rows: Sequence[Mapping[str, Any]]) -> Iterator[RenderableType]:
+    table = _table(("vertices", "left"), ("adjusted", "right"), ("sd", "right"), title="vertices, as numbered")
+    for row in rows[:_ROWS]:
+        table.add_row(visible(row["id"]), number(row["potential"], 9), number(row["potential_sd"], 3))
+    yield table
+    yield from _more(len(rows), "--json or --vertices FILE")
 
 
 def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]]) -> Iterator[RenderableType]:
@@ -191,7 +203,7 @@ def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]]) -> Iterator[Rende
         mark = Text(_MARK[row["holds"]], _STYLE[row["holds"]])
         table.add_row(visible(row["id"]), number(row["value"]), number(row["limit"], 3), mark, place)
     yield table
-    yield from _more(len(rows))
+    yield from _more(len(rows), "--json or -o FILE" if name in ("faces", "cells") else "--json")
 
 
 def _kind(result: Mapping[str, Any]) -> str:
@@ -232,9 +244,9 @@ def _table(*columns: tuple[str, Any], title: str = "") -> Table:
     return table
 
 
-def _more(count: int) -> Iterator[RenderableType]:
+def _more(count: int, where: str = "--json or -o FILE") -> Iterator[RenderableType]:
     if count > _ROWS:
-        yield Text(f"  {count - _ROWS:,} more in --json or -o FILE\n")
+        yield Text(f"  {count - _ROWS:,} more in {where}\n")
 
 
 def _plural(count: int, noun: str) -> str:

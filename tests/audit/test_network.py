@@ -16,7 +16,7 @@ from dec.errors import AccuracyError, InputError, UnsolvableError
 EDGE_KEYS = ["id", "from", "to", "value", "sd", "adjusted", "adjusted_sd", "correction", "redundancy", "statistic"]
 EDGE_KEYS += ["detectable", "standing"]
 VERTEX_KEYS = ["id", "residual", "sd", "statistic", "potential", "potential_sd"]
-LOOP_KEYS = ["id", "legs", "misclosure", "sd", "statistic", "limit", "holds"]
+LOOP_KEYS = ["id", "legs", "misclosure", "sd", "statistic", "limit", "holds", "held"]
 SUSPECT_KEYS = ["kind", "id", "statistic", "estimate", "inseparable_from", "hint"]
 TOP_KEYS = ["schema", "law", "holds", "inputs", "counts", "dof", "chi_square", "limit", "p_value", "edges", "vertices"]
 TOP_KEYS += ["loops", "suspects", "notes", "not_shown"]

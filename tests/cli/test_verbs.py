@@ -342,3 +342,24 @@ def test_an_open_surface_whose_rim_does_not_close_is_not_called_closed(run, tmp_
     code, out, _ = run("check", tmp_path / "three.off")
     assert code == 1
     assert "closed" not in out
+
+
+def test_adjusted_potentials_are_shown_and_written(run, tmp_path):
+    (tmp_path / "lines.csv").write_text("id,from,to,dh\nl1,A,B,1.5\nl2,B,C,2.6\n")
+    (tmp_path / "marks.csv").write_text("id,height\nA,10\nB,\nC,14.0\n")
+    words = ("loops", tmp_path / "lines.csv", "--nodes", tmp_path / "marks.csv", "--value", "dh", "--fixed", "height")
+    code, out, _ = run(*words, "--sd", "0.1", "--vertices", tmp_path / "heights.csv")
+    assert code == 0
+    assert "A to C held" in out or "C to A held" in out
+    assert "11.45" in out
+    rows = (tmp_path / "heights.csv").read_text().splitlines()
+    assert rows[0] == "id,potential,potential_sd"
+    assert rows[2].startswith("B,11.45,0.0707")
+    (loop,) = json.loads(run(*words, "--json")[1])["loops"]
+    assert sorted(loop["held"]) == ["A", "C"]
+
+
+def test_a_loop_without_held_vertices_says_so(run, tmp_path):
+    (tmp_path / "e.csv").write_text("from,to,y\nA,B,1\nB,A,-1\n")
+    (loop,) = json.loads(run("loops", tmp_path / "e.csv", "--value", "y", "--json")[1])["loops"]
+    assert loop["held"] is None
