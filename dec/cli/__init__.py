@@ -1,0 +1,5 @@
+"""The command line: ``dec VERB ...``."""
+
+from dec.cli.run import main
+
+__all__ = ["main"]
