@@ -9,10 +9,10 @@ from dec.audit.record import Audit
 from dec.calculus.dataset import Field
 from dec.errors import InputError
 from dec.files.tables_out import csv_bytes
-from dec.files.vtu import vtu_bytes
+from dec.files.vtu import vtu_bytes, vtu_notes
 from dec.solvers.solution import Solution
 
-__all__ = ["flow_bytes", "result_bytes", "vertex_bytes"]
+__all__ = ["flow_bytes", "result_bytes", "result_notes", "vertex_bytes"]
 
 
 def result_bytes(audit: Audit, name: str) -> bytes:
@@ -44,6 +44,18 @@ def result_bytes(audit: Audit, name: str) -> bytes:
     fitting = ".csv (a table)" if on_network else ".vtu (a mesh)"
     message = f"-o {name}: the result of this audit must be written as {fitting}"
     raise InputError(message)
+
+
+def result_notes(audit: Audit) -> tuple[str, ...]:
+    """What the file of `result_bytes` does not hold as the input had it, in words."""
+    if "edges" in audit.tables:
+        return ()
+    notes = list(vtu_notes(audit.data, _given_fields(audit)))
+    if audit.data.regions:
+        notes.append(f"named groups have no place in VTU and were not written: {', '.join(audit.data.regions)}")
+    if not _cell_fields(audit):
+        notes.append("the audit has no value for each cell: the file holds the mesh and its fields only")
+    return tuple(notes)
 
 
 def flow_bytes(solution: Solution) -> bytes:

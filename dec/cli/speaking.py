@@ -11,7 +11,7 @@ from typing import Any
 
 from dec.errors import OutputError
 
-__all__ = ["patience", "print_json", "show", "to_nowhere", "write"]
+__all__ = ["patience", "print_json", "remark", "show", "to_nowhere", "write"]
 
 _SECONDS = 2.0
 
@@ -74,6 +74,12 @@ def write(data: bytes) -> None:
         message = f"standard output cannot be written ({error.strerror})"
         to_nowhere()
         raise OutputError(message) from None
+
+
+def remark(options: argparse.Namespace, notes: Iterable[str]) -> None:
+    """Print notes on standard error, or nothing with --quiet."""
+    if not options.quiet:
+        sys.stderr.write("".join(f"dec: {ascii(note)[1:-1]}\n" for note in notes))
 
 
 def to_nowhere() -> None:

@@ -5,7 +5,7 @@ from collections.abc import Iterable
 from typing import TYPE_CHECKING, Any
 
 from dec.cli.codes import FINDING, OK, UNSOLVABLE, UsageError
-from dec.cli.speaking import patience, show, write
+from dec.cli.speaking import patience, remark, show, write
 
 if TYPE_CHECKING:
     from dec.audit.record import Audit
@@ -94,7 +94,7 @@ def demo_verb(options: argparse.Namespace) -> int:
 
 
 def _conclude(options: argparse.Namespace, audit: "Audit") -> int:
-    from dec.audit.output import result_bytes, vertex_bytes
+    from dec.audit.output import result_bytes, result_notes, vertex_bytes
     from dec.files.writing import write_atomically
     from dec.report.terminal import audit_view
 
@@ -108,6 +108,8 @@ def _conclude(options: argparse.Namespace, audit: "Audit") -> int:
     if options.output == "-":
         write(made)
     else:
+        if options.output:
+            remark(options, result_notes(audit))
         show(options, found, audit_view)
     if audit.holds is None:
         return UNSOLVABLE

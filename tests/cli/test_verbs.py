@@ -363,3 +363,12 @@ def test_a_loop_without_held_vertices_says_so(run, tmp_path):
     (tmp_path / "e.csv").write_text("from,to,y\nA,B,1\nB,A,-1\n")
     (loop,) = json.loads(run("loops", tmp_path / "e.csv", "--value", "y", "--json")[1])["loops"]
     assert loop["held"] is None
+
+
+def test_what_a_mesh_file_cannot_hold_is_told_on_standard_error(run, tmp_path):
+    annulus = Path(__file__).parents[2] / "meshes" / "annulus.vtu"
+    code, _, err = run("loops", annulus, "--field", "vortex", "-o", tmp_path / "out.vtu")
+    assert code == 1
+    assert "third of vortex, vortex_c was written as 0" in err
+    assert "circulation" in (tmp_path / "out.vtu").read_text()
+    assert run("loops", annulus, "--field", "vortex", "-o", tmp_path / "out.vtu", "--force", "--quiet")[1:] == ("", "")
