@@ -2,10 +2,12 @@
 
 import argparse
 from collections.abc import Iterable
+from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from dec.cli.codes import FINDING, OK, UNSOLVABLE, UsageError
 from dec.cli.speaking import patience, remark, show, write
+from dec.errors import OutputError
 
 if TYPE_CHECKING:
     from dec.audit.record import Audit
@@ -118,6 +120,13 @@ def _conclude(options: argparse.Namespace, audit: "Audit") -> int:
 
 def _read(options: argparse.Namespace) -> "Dataset":
     from dec.files.read import read
+
+    outputs = [path for path in (getattr(options, name, None) for name in ("output", "vertices")) if path]
+    for source in filter(None, (options.file, options.nodes)):
+        for path in outputs:
+            if Path(path).exists() and Path(source).exists() and Path(path).samefile(source):
+                message = f"{path} is an input; results never replace what they were made from, name another file"
+                raise OutputError(message)
 
     return read(options.file, options.nodes, decimal=options.decimal)
 

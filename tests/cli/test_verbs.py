@@ -372,3 +372,13 @@ def test_what_a_mesh_file_cannot_hold_is_told_on_standard_error(run, tmp_path):
     assert "third of vortex, vortex_c was written as 0" in err
     assert "circulation" in (tmp_path / "out.vtu").read_text()
     assert run("loops", annulus, "--field", "vortex", "-o", tmp_path / "out.vtu", "--force", "--quiet")[1:] == ("", "")
+
+
+def test_results_never_replace_their_own_input_not_even_with_force(run, junction):
+    before = (junction / "pipes.csv").read_bytes()
+    (junction / "link.csv").symlink_to(junction / "pipes.csv")
+    for target in ("pipes.csv", "link.csv"):
+        code, out, err = run("balance", junction / "pipes.csv", "--value", "flow", "-o", junction / target, "--force")
+        assert (code, out) == (5, "")
+        assert "is an input" in err
+    assert (junction / "pipes.csv").read_bytes() == before
