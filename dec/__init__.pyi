@@ -8,6 +8,7 @@ from .calculus.cochain import Cochain as Cochain
 from .calculus.complex import Complex as Complex
 from .calculus.complex import grid as grid
 from .calculus.dataset import Dataset as Dataset
+from .calculus.dataset import Field as Field
 from .calculus.exact import check_line_integral as check_line_integral
 from .calculus.exact import check_stokes as check_stokes
 from .calculus.exact import exact_integral as exact_integral

@@ -23,6 +23,10 @@ ObjectArray = NDArray[np.object_]
 SignArray = NDArray[np.int8]
 
 _LARGEST_INT = 2**63 - 1
+_WHOLE = {
+    "f": "; convert it with .astype(int) if that is meant",
+    "b": "; numpy.flatnonzero turns a mask into the numbers it marks",
+}
 
 
 def frozen(array: AnyArray) -> AnyArray:
@@ -61,7 +65,7 @@ def index_array(values: ArrayLike, name: str, *, ndim: int | None = 1) -> IntArr
     if array.size == 0 and array.dtype == np.float64:  # what NumPy makes of an empty list
         array = array.astype(np.int64)
     if array.dtype.kind not in "iu":
-        way_out = "; convert it with .astype(int) if that is meant" if array.dtype.kind in "fb" else ""
+        way_out = _WHOLE.get(array.dtype.kind, "")
         message = f"{name} must hold whole numbers, got {_kind(array)}{way_out}"
         raise InputError(message)
     _refuse_other_axes(array, name, ndim)

@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 
 from dec.arrays import IntArray
+from dec.audit.names import counted
 from dec.calculus.columns import Column
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
@@ -23,8 +24,9 @@ __all__ = ["Condition", "check"]
 
 SCHEMA = "dec.check/1"
 _NAMED = 5
-_LIKE_NUMBER = re.compile(r"\s*[+-]?[.,]?[0-9]")
+_LIKE_NUMBER = re.compile(r"\s*[+-]?[.,]?[0-9][0-9.,' ]*([eE][+-]?[0-9]+)?\s*")  # a date is not
 _CELLS = ("vertices", "edges", "faces", "cells")
+_ONE = ("vertex", "edge", "face", "cell")
 
 
 @dataclass(frozen=True, eq=False)
@@ -66,6 +68,7 @@ class Condition:
             "orientable": K.is_orientable,
             "closed": K.dim > 1 and not bool((K.incidences.uses == 1).any()),
             "boundary_loops": len(K.boundary_loops()) if K.dim == 2 else None,
+            "to_turn": K.turning_proposal().tolist() if K.dim > 1 else [],
             "findings": [
                 {
                     "name": f.name, "holds": f.holds, "measured": _plain(f.measured), "allowed": _plain(f.allowed),
@@ -129,7 +132,7 @@ def _number_findings(columns: Mapping[str, Column]) -> list[Finding]:
     for name, column in columns.items():
         if name in _STRUCTURE - {"x", "y", "z"} or column.cells.dtype != object:
             continue
-        numeric = sum(bool(_LIKE_NUMBER.match(cell)) for cell in column.cells)
+        numeric = sum(bool(_LIKE_NUMBER.fullmatch(cell)) for cell in column.cells)
         if 2 * numeric <= int(column.present().sum()):
             continue
         try:
@@ -143,17 +146,17 @@ def _network_facts(data: Dataset) -> dict[str, str]:
     K = data.complex
     alone = np.flatnonzero(bridges(K.tail, K.head, K.counts[0]))
     loops = K.counts[1] - K.counts[0] + K.n_components
-    checked = f"{_edges(len(alone))} on no loop ({_some(K, alone)})" if len(alone) else "every edge lies on a loop"
-    facts = {"loops": f"{loops} independent loop{'' if loops == 1 else 's'}; {checked}"}
+    checked = f"{_cells(len(alone), 1)} on no loop ({_some(K, alone)})" if len(alone) else "every edge lies on a loop"
+    facts = {"loops": f"{counted(loops, 'independent loop', 'independent loops')}; {checked}"}
     low, high = np.minimum(K.tail, K.head), np.maximum(K.tail, K.head)
     proper = low != high
     distinct, _, _ = unique_pairs(low[proper], high[proper], K.counts[0])
     parallel = int(proper.sum()) - len(distinct)
     if parallel:
-        facts["parallel"] = f"{_edges(parallel)} beside another edge of the same two vertices"
+        facts["parallel"] = f"{_cells(parallel, 1)} beside another edge of the same two vertices"
     same = np.flatnonzero(K.tail == K.head)
     if len(same):
-        facts["self"] = f"{_edges(len(same))} with both ends at one vertex ({_some(K, same)})"
+        facts["self"] = f"{_cells(len(same), 1)} with both ends at one vertex ({_some(K, same)})"
     for degree, what in ((1, "edges"), (0, "vertices")):
         described = [
             _column_fact(column) for name, column in data.columns.get(degree, {}).items() if name not in _STRUCTURE
@@ -182,7 +185,7 @@ def _mesh_facts(data: Dataset) -> dict[str, str]:
         size = " x ".join(f"{extent:.6g}" for extent in np.ptp(K.points, axis=0))
         facts["box"] = f"{size} (unit of the file)"
     uses = K.incidences.uses
-    facts["open"] = f"{int((uses == 1).sum()):,} {_CELLS[K.dim - 1]} with one {'face' if K.dim == 2 else 'cell'} only"
+    facts["open"] = f"{_cells(int((uses == 1).sum()), K.dim - 1)} with one {_ONE[K.dim]} only"
     turn = K.turning_proposal()
     if len(turn):
         first = ", ".join(map(str, turn[:_NAMED])) + (", ..." if len(turn) > _NAMED else "")
@@ -190,12 +193,12 @@ def _mesh_facts(data: Dataset) -> dict[str, str]:
     if data.fields:
         facts["fields"] = ", ".join(f"{name} ({' and '.join(places)})" for name, places in data.fields.items())
     if data.regions:
-        facts["regions"] = ", ".join(f"{r.name} ({len(r.cells)} {_CELLS[r.degree]})" for r in data.regions.values())
+        facts["regions"] = ", ".join(f"{r.name} ({_cells(len(r.cells), r.degree)})" for r in data.regions.values())
     return facts
 
 
-def _edges(count: int) -> str:
-    return f"{count} edge{'' if count == 1 else 's'}"
+def _cells(count: int, degree: int) -> str:
+    return f"{count:,} {_ONE[degree] if count == 1 else _CELLS[degree]}"
 
 
 def _some(K: Complex, edges: IntArray) -> str:

@@ -19,6 +19,9 @@ if TYPE_CHECKING:
 __all__ = ["Dataset", "Field", "Input", "Region"]
 
 _DEGREE_NAMES = ("vertices", "edges", "faces", "cells")
+_ONE = ("vertex", "edge", "face", "cell")
+_STRUCTURE = frozenset({"id", "from", "to", "x", "y", "z"})
+_SHOWN = 8
 
 
 @dataclass(frozen=True, slots=True)
@@ -141,13 +144,16 @@ class Dataset:
         return cls(complex_, {0: nodes or {}, 1: edges})
 
     def __repr__(self) -> str:
-        parts = [f"{self.complex!r}"[1:-1]]
-        for degree, names in self.columns.items():
-            if names:
-                parts.append(f"columns on {_DEGREE_NAMES[degree]}: {', '.join(names)}")
+        names = (_ONE[k] if count == 1 else _DEGREE_NAMES[k] for k, count in enumerate(self.complex.counts))
+        parts = [", ".join(f"{n:,} {name}" for n, name in zip(self.complex.counts, names, strict=True))]
+        for degree, where in ((1, "columns"), (0, "at nodes")):
+            columns = [name for name in self.columns.get(degree, ()) if name not in _STRUCTURE]
+            if columns:
+                parts.append(f"{where} {_first(columns)}")
         if self.fields:
-            parts.append(f"fields: {', '.join(self.fields)}")
-        return f"<Dataset of {'; '.join(parts)}>"
+            placed = [f"{name} ({' and '.join(places)})" for name, places in self.fields.items()]
+            parts.append(f"fields {_first(placed)}")
+        return f"<Dataset: {'; '.join(parts)}>"
 
     def column(self, name: str, degree: int) -> Column:
         """The named column of a degree.
@@ -253,6 +259,10 @@ def _required(table: Mapping[str, Column], name: str) -> Column:
         message = f"{source}: a column {name!r} is needed; {_offer(name, list(table))}"
         raise InputError(message)
     return table[name]
+
+
+def _first(names: list[str]) -> str:
+    return ", ".join(names[:_SHOWN]) + (", ..." if len(names) > _SHOWN else "")
 
 
 def _offer(name: str, known: list[str]) -> str:

@@ -15,6 +15,8 @@ if TYPE_CHECKING:
 
 __all__ = ["balance_verb", "check_verb", "demo_verb", "loops_verb", "solve_verb"]
 
+_ALPHA = 0.05
+
 
 def check_verb(options: argparse.Namespace) -> int:
     """Is it sound? Exit code 0, or 1 with a finding."""
@@ -32,7 +34,7 @@ def balance_verb(options: argparse.Namespace) -> int:
     """Do the flows add up? Exit code 0, 1, or 4 where nothing is decided."""
     from dec.audit.questions import balance
 
-    _refuse_unfit(options, network=("sd", "supply", "open", "open_column"))
+    _refuse_unfit(options, network=("sd", "alpha", "supply", "open", "open_column"))
     with patience("balancing", options):
         data = _read(options)
         opened: str | list[str] = options.open_column or options.open or []
@@ -40,7 +42,7 @@ def balance_verb(options: argparse.Namespace) -> int:
             opened = _both(data, options.open_column, options.open)
         audit = balance(
             data, options.value, options.sd, opened, options.supply, field=options.field, at=options.at,
-            alpha=options.alpha, limit=options.limit, unit=options.unit,
+            alpha=options.alpha or _ALPHA, limit=options.limit, unit=options.unit,
         )  # fmt: skip
     return _conclude(options, audit)
 
@@ -49,11 +51,11 @@ def loops_verb(options: argparse.Namespace) -> int:
     """Do the differences close? Exit codes as for `balance_verb`."""
     from dec.audit.questions import loops
 
-    _refuse_unfit(options, network=("sd", "fixed"))
+    _refuse_unfit(options, network=("sd", "alpha", "fixed"))
     with patience("closing loops", options):
         audit = loops(
             _read(options), options.value, options.sd, options.fixed, field=options.field, at=options.at,
-            alpha=options.alpha, limit=options.limit, unit=options.unit,
+            alpha=options.alpha or _ALPHA, limit=options.limit, unit=options.unit,
         )  # fmt: skip
     return _conclude(options, audit)
 
@@ -149,6 +151,9 @@ def _refuse_unfit(options: argparse.Namespace, network: Iterable[str]) -> None:
     if (options.value is None) == (options.field is None):
         message = "give --value COLUMN for a network, or --field NAME for a mesh"
         raise UsageError(message)
+    if options.value is not None and options.limit is not None and not _is_number(options.limit):
+        message = f"--limit must be a number on a network, in the unit of the readings, got {options.limit!r}"
+        raise UsageError(message)
     if options.value is not None and options.at is not None:
         message = "--at belongs to a mesh field, not to --value"
         raise UsageError(message)
@@ -159,3 +164,9 @@ def _refuse_unfit(options: argparse.Namespace, network: Iterable[str]) -> None:
         if options.field is not None and getattr(options, name):
             message = f"--{name.replace('_', '-')} belongs to a network column, not to --field"
             raise UsageError(message)
+
+
+def _is_number(text: str) -> bool:
+    from dec.calculus.columns import reads_as_number
+
+    return reads_as_number(text)

@@ -36,7 +36,7 @@ def parser(as_json: bool) -> argparse.ArgumentParser:
     check = _verb(verbs, "check", check_verb, "is it sound, and what can be checked with it?",
                   "dec check meshes/bracket.stl\n  dec check pipes.csv --nodes nodes.csv")  # fmt: skip
     check.add_argument("file", metavar="FILE", help="edge table or mesh; - reads a table from standard input")
-    _common(check)
+    _common(check, writes=False)
 
     balance = _verb(verbs, "balance", balance_verb, "do the flows add up?",
                     "dec balance pipes.csv --nodes nodes.csv --value flow --sd 2%+0.05 --open R1\n"
@@ -105,9 +105,7 @@ def _audited(verb: argparse.ArgumentParser) -> None:
     )
     verb.add_argument("--field", metavar="NAME", help="mesh: vector field to audit")
     verb.add_argument("--at", choices=("vertices", "cells"), help="mesh: which field, where both have the name")
-    verb.add_argument(
-        "--alpha", type=_probability, default=0.05, metavar="P", help="false-alarm rate of the test (0.05)"
-    )
+    verb.add_argument("--alpha", type=_probability, metavar="P", help="network: false-alarm rate of the test (0.05)")
     verb.add_argument(
         "--limit",
         metavar="LIMIT",
@@ -129,15 +127,16 @@ def _probability(text: str) -> float:
     return number
 
 
-def _common(verb: argparse.ArgumentParser) -> None:
+def _common(verb: argparse.ArgumentParser, *, writes: bool = True) -> None:
     verb.add_argument("--nodes", metavar="FILE", help="node table")
     verb.add_argument("--decimal", choices=(".", ","), default=".", help="decimal sign of the tables (.)")
-    _shared(verb)
+    _shared(verb, writes=writes)
 
 
-def _shared(verb: argparse.ArgumentParser) -> None:
+def _shared(verb: argparse.ArgumentParser, *, writes: bool = True) -> None:
     verb.add_argument("--json", action="store_true", help="print one JSON object instead of text")
-    verb.add_argument("--force", action="store_true", help="replace existing output files")
+    if writes:
+        verb.add_argument("--force", action="store_true", help="replace existing output files")
     verb.add_argument("--quiet", action="store_true", help="print errors only; the exit code tells")
 
 

@@ -46,7 +46,7 @@ def assemble(parts: MeshParts, source: Input) -> Dataset:
     kinds = [KINDS[int(kind)] for kind in np.unique(parts.kinds)]
     top = max((kind.dimension for kind in kinds), default=0)
     if top == 0:
-        message = f"{source.name} must hold edges, faces or solid cells, found {len(parts.points)} points only"
+        message = f"{source.name} must hold edges, faces or solid cells, found {_points(len(parts.points))} only"
         raise InputError(message)
     order, corners = _top_cells(parts, top, source.name, notes)
     points, fields = _flattened(parts, order, notes)
@@ -57,6 +57,10 @@ def assemble(parts: MeshParts, source: Input) -> Dataset:
         raise InputError(message) from None
     regions = regions_of(complex_, parts, order, source.name)
     return Dataset(complex_, {}, _by_place(fields), regions, (source,), tuple(notes))
+
+
+def _points(count: int) -> str:
+    return f"{count} point{'' if count == 1 else 's'}"
 
 
 def _refuse_bad_points(parts: MeshParts, name: str) -> None:
@@ -97,15 +101,17 @@ def _note_lower(kinds: IntArray, dimension: IntArray, top: int, notes: list[str]
     for lower in range(top):
         count = int((dimension[kinds] == lower).sum())
         if count:
-            notes.append(f"{count} {_DIMENSION_NAMES[lower]} of the file name parts only; "
-                         f"the {_DIMENSION_NAMES[top]} make the complex")  # fmt: skip
+            name = _DIMENSION_NAMES[lower]
+            which = f"{name[:-1]} of the file names" if count == 1 else f"{name} of the file name"
+            notes.append(f"{count} {which} parts only; the {_DIMENSION_NAMES[top]} make the complex")
 
 
 def _note_quadratic(kinds: IntArray, notes: list[str]) -> None:
     for number, count in zip(*np.unique(kinds, return_counts=True), strict=True):
         kind = KINDS[int(number)]
         if kind.nodes > len(kind.corners) > 0:
-            notes.append(f"{count} {kind.name} cells were read by their corners; the other nodes stay as unused points")
+            which = f"{kind.name} cell was read by its" if count == 1 else f"{kind.name} cells were read by their"
+            notes.append(f"{count} {which} corners; the other nodes stay as unused points")
 
 
 def _refuse_unsupported(kinds: IntArray, name: str) -> None:

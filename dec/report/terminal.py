@@ -15,6 +15,8 @@ __all__ = ["audit_view", "check_view", "solve_view"]
 
 _ROWS = 8
 _AXES = ("x", "y", "z")
+_ON_MESH = ("faces", "cells", "shells", "regions", "boundaries", "holes")
+_ONE = {"vertices": "vertex", "edges": "edge", "faces": "face", "cells": "cell"}
 _MARK = {True: "holds", False: "FAILS", None: "open"}
 _STYLE = {True: "bold green", False: "bold red", None: "bold yellow"}
 
@@ -51,7 +53,8 @@ def check_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
     """A soundness check for reading: what it is, then each statement and whether it holds."""
     failed = sum(not f["holds"] for f in result["findings"])
     yield _heading(result, "check", not failed)
-    yield _item("cells", ", ".join(f"{n:,} {name}" for name, n in result["counts"].items()))
+    counts = (f"{n:,} {_ONE[name] if n == 1 else name}" for name, n in result["counts"].items())
+    yield _item("cells", ", ".join(counts))
     betti = ", ".join(f"b{k} = {n}" for k, n in enumerate(result["betti"]))
     yield _item(
         "shape", f"{_plural(result['components'], 'component')}, Euler characteristic {result['euler']}, {betti}"
@@ -122,11 +125,13 @@ def _tables(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         yield from _worst("vertices", "in - out + supply", rows, "residual")
     elif "loops" in result:
         yield from _loops(result)
-        if result["dof"]:
+        if result["loops"] or result["asked"].get("fixed"):
             yield from _potentials(result["vertices"])
-    for name in ("faces", "cells", "shells", "regions", "boundaries", "holes"):
-        if result.get(name):
-            yield from _worst_cells(name, result[name])
+    tables = {name: result[name] for name in _ON_MESH if result.get(name)}
+    places = (row.get(axis) for rows in tables.values() for row in rows for axis in _AXES)
+    size = max((abs(place) for place in places if place is not None), default=0.0)
+    for name, rows in tables.items():
+        yield from _worst_cells(name, rows, size)
 
 
 def _suspects(result: Mapping[str, Any]) -> Iterator[RenderableType]:
@@ -148,11 +153,12 @@ def _suspects(result: Mapping[str, Any]) -> Iterator[RenderableType]:
 def _worst(title: str, heading: str, rows: Sequence[Mapping[str, Any]], key: str) -> Iterator[RenderableType]:
     if not rows:
         return
-    table = _table(
-        (title, "left"), (heading, "right"), ("sd", "right"), ("times sd", "right"), title=f"{title}, worst first"
-    )
+    with_sd = any(row["sd"] is not None for row in rows)
+    spread = (("sd", "right"), ("times sd", "right")) if with_sd else ()
+    table = _table((title, "left"), (heading, "right"), *spread, title=f"{title}, worst first")
     for row in rows[:_ROWS]:
-        table.add_row(visible(row["id"]), number(row[key]), number(row["sd"], 3), number(row["statistic"], 3))
+        figures = (number(row["sd"], 3), number(row["statistic"], 3)) if with_sd else ()
+        table.add_row(visible(row["id"]), number(row[key]), *figures)
     yield table
     yield from _more(len(rows), "--json or --vertices FILE")
 
@@ -180,14 +186,18 @@ def _loops(result: Mapping[str, Any]) -> Iterator[RenderableType]:
 
 
 def _potentials(rows: Sequence[Mapping[str, Any]]) -> Iterator[RenderableType]:
-    table = _table(("vertices", "left"), ("adjusted", "right"), ("sd", "right"), title="vertices, as numbered")
+    with_sd = any(row["potential_sd"] is not None for row in rows)
+    spread = (("sd", "right"),) if with_sd else ()
+    table = _table(("vertices", "left"), ("adjusted", "right"), *spread, title="vertices, as numbered")
     for row in rows[:_ROWS]:
-        table.add_row(visible(row["id"]), number(row["potential"], 9), number(row["potential_sd"], 3))
+        figures = (number(row["potential_sd"], 3),) if with_sd else ()
+        table.add_row(visible(row["id"]), number(row["potential"], 9), *figures)
     yield table
     yield from _more(len(rows), "--json or --vertices FILE")
 
 
-def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]]) -> Iterator[RenderableType]:
+def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]], size: float) -> Iterator[RenderableType]:
+    """Yield one table; `size` is the largest coordinate of the audit, against which rounding noise shows as 0."""
     table = _table(
         (name, "left"),
         ("value", "right"),
@@ -196,7 +206,6 @@ def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]]) -> Iterator[Rende
         ("at", "left"),
         title=f"{name}, worst first",
     )
-    size = max((abs(row[axis]) for row in rows for axis in _AXES if row.get(axis) is not None), default=0.0)
     for row in rows[:_ROWS]:
         places = (row[axis] for axis in _AXES if row.get(axis) is not None)
         place = ", ".join(number(p if abs(p) > 1e-12 * size else 0.0, 4) for p in places)

@@ -91,7 +91,8 @@ def checked_sentence(result: Mapping[str, Any]) -> str:
     by_standing: dict[str, list[str]] = {}
     for edge in edges:
         by_standing.setdefault(edge["standing"], []).append(edge["id"])
-    parts = [f"{len(by_standing.get('checked', ()))} of {result['counts']['measured']} readings"]
+    measured = result["counts"]["measured"]
+    parts = [f"{len(by_standing.get('checked', ()))} of {measured} reading{'' if measured == 1 else 's'}"]
     for word in ("unchecked", "inferred", "unknown"):
         names = by_standing.get(word, [])
         if names:

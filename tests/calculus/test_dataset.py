@@ -1,11 +1,14 @@
 """Datasets from frames and tables: ids are text, nothing is guessed, and every refusal names its place."""
 
+import copy
+import pickle
 from decimal import Decimal
 
 import numpy as np
 import pandas as pd
 import pytest
 
+from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset, Field, Input
 from dec.errors import InputError
 
@@ -155,3 +158,24 @@ def test_a_32_bit_float_counts_as_the_decimal_that_prints_it():
     frame = pd.DataFrame({"from": ["A", "B"], "to": ["B", "C"], "flow": np.array([0.1, np.nan], dtype="f4")})
     decimals = Dataset.from_frames(frame).column("flow", 1).decimals()
     assert (decimals.integers.tolist(), decimals.places, decimals.present.tolist()) == ([1, 0], 1, [True, False])
+
+
+def test_a_dataset_says_in_one_line_what_it_holds():
+    net = frames({"from": ["A"], "to": ["B"], "flow": [1], "sd": [2]}, {"id": ["A", "B"], "x": [0, 1], "open": [1, 0]})
+    assert repr(net) == "<Dataset: 2 vertices, 1 edge; columns flow, sd; at nodes open>"
+    places = {at: Field("air", at, np.zeros((n, 1))) for at, n in (("vertices", 2), ("cells", 1))}
+    assert repr(Dataset(net.complex, fields={"air": places})).endswith("; fields air (vertices and cells)>")
+    many = frames({**ONE_EDGE, **{f"c{k}": [k] for k in range(20)}})
+    assert repr(many).endswith("c6, c7, ...>")
+
+
+def test_a_dataset_can_be_pickled_and_copied():
+    net = frames({"from": ["A"], "to": ["B"], "flow": [1.5]})
+    for again in (pickle.loads(pickle.dumps(net)), copy.deepcopy(net)):
+        assert again.column("flow", 1).numbers().tolist() == [1.5]
+        assert again.complex.vertex_ids.tolist() == ["A", "B"]
+
+
+def test_a_mask_in_the_place_of_vertex_numbers_is_refused_with_a_way_out():
+    with pytest.raises(InputError, match=r"got bool; numpy\.flatnonzero turns a mask"):
+        Complex.from_edges(np.array([True, False]), [1, 0])

@@ -382,3 +382,111 @@ def test_results_never_replace_their_own_input_not_even_with_force(run, junction
         assert (code, out) == (5, "")
         assert "is an input" in err
     assert (junction / "pipes.csv").read_bytes() == before
+
+
+@pytest.mark.parametrize(
+    "words",
+    [
+        ("balance", "none.csv", "--value", "f", "--limit", "much"),
+        ("balance", "none.csv", "--value", "f", "--limit", "1%"),
+        ("loops", "none.vtu", "--field", "u", "--alpha", "0.05"),
+        ("check", "none.csv", "--force"),
+    ],
+)
+def test_words_that_would_be_ignored_or_misread_are_wrong_use(run, words):
+    code, out, err = run(*words)
+    assert (code, out) == (2, "")
+    assert words[-2].strip("-") in err or words[-1] in err
+
+
+def test_a_percentage_stays_a_limit_on_a_mesh(run):
+    annulus = Path(__file__).parents[2] / "meshes" / "annulus.vtu"
+    assert run("loops", annulus, "--field", "vortex", "--limit", "1%", "--quiet")[0] == 1
+
+
+def test_heights_that_hang_on_one_mark_are_shown_though_nothing_checks_them(run, tmp_path):
+    (tmp_path / "lines.csv").write_text("from,to,dh\nA,B,1.5\nB,C,2.25\n")
+    (tmp_path / "marks.csv").write_text("id,height\nA,10\nB,\nC,\n")
+    words = ("loops", tmp_path / "lines.csv", "--nodes", tmp_path / "marks.csv", "--value", "dh")
+    code, out, _ = run(*words, "--fixed", "height")
+    assert code == 4
+    assert "13.75" in out  # 10 + 1.5 + 2.25
+    assert "as numbered" not in run(*words)[1]
+
+
+def test_columns_of_standard_deviations_are_left_out_where_there_are_none(run, junction):
+    words = ("balance", junction / "pipes.csv", "--value", "flow", *ENDS)
+    assert "times sd" in run(*words, "--sd", "sd")[1]
+    out = run(*words)[1]
+    assert "in - out + supply" in out
+    assert "times sd" not in out
+
+
+def test_one_cell_is_counted_in_the_singular_and_faces_to_turn_are_listed(run, tmp_path):
+    (tmp_path / "one.off").write_text("OFF\n3 1 0\n0 0 0\n1 0 0\n0 1 1\n3 0 1 2\n")
+    out = run("check", tmp_path / "one.off")[1]
+    assert "3 edges, 1 face\n" in out
+    assert "3 edges with one face only" in out
+    (tmp_path / "one.csv").write_text("from,to\nA,B\n")
+    assert "2 vertices, 1 edge\n" in run("check", tmp_path / "one.csv")[1]
+    corners = "0 0 0\n1 0 0\n0 1 0\n0 0 1\n"
+    # a tetrahedron's surface with its last face turned about, by hand
+    faces = "3 0 2 1\n3 0 1 3\n3 1 2 3\n3 0 2 3\n"
+    (tmp_path / "four.off").write_text(f"OFF\n4 4 0\n{corners}{faces}")
+    assert json.loads(run("check", tmp_path / "four.off", "--json")[1])["to_turn"] == [3]
+    assert json.loads(run("check", tmp_path / "one.csv", "--json")[1])["to_turn"] == []
+
+
+def test_rounding_noise_in_the_place_of_a_hole_is_shown_as_0(run):
+    annulus = Path(__file__).parents[2] / "meshes" / "annulus.vtu"
+    out = run("loops", annulus, "--field", "vortex")[1]
+    row = next(line for line in out.splitlines() if line.startswith(" hole 1 "))
+    assert row.split()[-3:] == ["0,", "0,", "0"]
+    assert "e-17" not in out
+
+
+def test_what_is_not_defined_for_a_surface_is_not_among_its_findings(run, tmp_path):
+    corners = "0 0 0\n1 0 0\n0 1 0\n0 0 1\n0 -1 0\n"
+    faces = {
+        "three at an edge": "3 0 1 2\n3 0 1 3\n3 0 1 4\n", "one face": "3 0 1 2\n",
+        "closed": "3 0 2 1\n3 0 1 3\n3 1 2 3\n3 0 3 2\n",
+    }  # fmt: skip
+    names = {}
+    for what, lines in faces.items():
+        (tmp_path / "s.off").write_text(f"OFF\n5 {lines.count(chr(10))} 0\n{corners}{lines}")
+        names[what] = [f["name"] for f in json.loads(run("check", tmp_path / "s.off", "--json")[1])["findings"]]
+    alike, outward = "the faces can all be turned alike", "closed surfaces are turned outward"
+    assert [alike in names[what] for what in faces] == [False, True, True]
+    assert [outward in names[what] for what in faces] == [False, False, True]
+
+
+def test_an_error_of_a_spreadsheet_among_numbers_is_a_finding_and_a_text_column_is_not(run, tmp_path):
+    (tmp_path / "e.csv").write_text("from,to,flow,name\nA,B,1.5,north\nB,C,#VALUE!,south\nC,A,2,east\n")
+    code, out, _ = run("check", tmp_path / "e.csv", "--json")
+    found = json.loads(out)
+    (failed,) = [f for f in found["findings"] if not f["holds"]]
+    assert (code, failed["name"]) == (1, "column flow can be read as numbers")
+    assert "e.csv line 3" in failed["where"][0]
+    assert "name (text)" in found["facts"]["columns"]
+
+
+def test_where_the_other_rows_stand_is_true_of_every_table(run, tmp_path):
+    ring = "".join(f"{k},{(k + 1) % 12},1\n" for k in range(12))
+    chords = "".join(f"{k},{k + 6},{k}\n" for k in range(3))
+    spokes = "".join(f"{k},{(k + 4) % 12},{k}\n" for k in range(7))
+    (tmp_path / "e.csv").write_text(f"from,to,y\n{ring}{chords}{spokes}")
+    table = tmp_path / "v.csv"
+    for verb, rows in (("balance", "residual"), ("loops", "potential")):
+        out = run(verb, tmp_path / "e.csv", "--value", "y", "--sd", "1", "--vertices", table, "--force")[1]
+        assert "  4 more in --json or --vertices FILE\n" in out  # 12 vertices, 8 of them shown
+        lines = table.read_text().splitlines()
+        assert rows in lines[0].split(",")
+        assert len(lines) == 13
+    loops = json.loads(run("loops", tmp_path / "e.csv", "--value", "y", "--json")[1])["loops"]
+    assert len(loops) == 11  # 22 edges, 12 vertices, one part
+    assert "  3 more in --json\n" in out
+
+
+def test_a_column_of_dates_is_text_and_no_finding(run, tmp_path):
+    (tmp_path / "e.csv").write_text("from,to,flow,day\nA,B,1,2026-01-05\nB,A,1,2026-01-06\n")
+    assert run("check", tmp_path / "e.csv")[0] == 0

@@ -79,8 +79,8 @@ def test_lower_cells_are_told_and_their_values_go_with_them():
     surface = assemble(parts(TILTED, cells, cell_data={"q": np.array([[0.0], [1], [2], [3]])}), FILE)
     assert surface.field("q").values.ravel().tolist() == [1, 3]
     assert surface.notes == (
-        "1 points of the file name parts only; the faces make the complex",
-        "1 lines of the file name parts only; the faces make the complex",
+        "1 point of the file names parts only; the faces make the complex",
+        "1 line of the file names parts only; the faces make the complex",
     )
 
 
@@ -102,7 +102,7 @@ def test_cells_with_nodes_beside_their_corners_are_read_by_the_corners(number: i
     assert mesh.complex.counts[0] == kind.nodes
     used = np.unique(np.concatenate([mesh.complex.tail, mesh.complex.head]))
     assert used.tolist() == list(range(len(kind.corners)))
-    assert mesh.notes == (f"1 {kind.name} cells were read by their corners; the other nodes stay as unused points",)
+    assert mesh.notes == (f"1 {kind.name} cell was read by its corners; the other nodes stay as unused points",)
 
 
 @pytest.mark.parametrize("number", [13, 14, 26, 27])

@@ -103,7 +103,7 @@ def test_the_same_square_in_every_version_is_the_same(name: str, tmp_path: Path)
     assert (side.degree, len(side.cells)) == (1, 1)
     assert {square.complex.tail[edge], square.complex.head[edge]} == {0, 3}
     assert (square.regions["plate"].degree, square.regions["plate"].cells.tolist()) == (2, [0])
-    assert square.notes == ("1 lines of the file name parts only; the faces make the complex",)
+    assert square.notes == ("1 line of the file names parts only; the faces make the complex",)
 
 
 FIELDS = (
@@ -190,7 +190,7 @@ def test_quadratic_elements_are_read_by_their_corners_and_told(tmp_path: Path):
     (tmp_path / "t.msh").write_bytes(text)
     surface = read(tmp_path / "t.msh")
     assert surface.complex.faces.flat.tolist() == [0, 1, 2]
-    assert surface.notes == ("1 triangle6 cells were read by their corners; the other nodes stay as unused points",)
+    assert surface.notes == ("1 triangle6 cell was read by its corners; the other nodes stay as unused points",)
 
 
 @pytest.mark.parametrize("kind", ["gmsh22", "gmsh"])

@@ -114,7 +114,7 @@ def test_lines_beside_faces_are_told(tmp_path: Path):
     (tmp_path / "t.obj").write_text("v 0 0 0\nv 1 0 0\nv 0 1 1\nf 1 2 3\nl 1 2\n")
     surface = read(tmp_path / "t.obj")
     assert surface.complex.counts == (3, 3, 1)
-    assert surface.notes == ("1 lines of the file name parts only; the faces make the complex",)
+    assert surface.notes == ("1 line of the file names parts only; the faces make the complex",)
 
 
 def test_a_ply_file_of_edges_is_a_graph_with_fields(tmp_path: Path):
