@@ -1,6 +1,7 @@
 """The cells of a complex, numbered, and what follows from their incidence alone."""
 
 from collections.abc import Iterable, Mapping
+from copy import copy
 from functools import cached_property
 from types import MappingProxyType
 from typing import Any
@@ -95,7 +96,7 @@ class Cells:
         >>> Complex.from_faces([[0, 1, 2]]).coboundary(1).toarray()
         array([[ 1, -1,  1]], dtype=int8)
         """
-        return self._coboundaries[checked_degree(k, range(self.dim), self.dim)]
+        return copy(self._coboundaries[checked_degree(k, range(self.dim), self.dim)])
 
     def boundary(self, k: int) -> csr_array:
         """Signed incidence from k-cells to (k-1)-cells, the transpose of ``coboundary(k - 1)``.
@@ -123,7 +124,7 @@ class Cells:
                [ 1, -1],
                [ 0,  1]], dtype=int8)
         """
-        return self._boundaries[checked_degree(k, range(1, self.dim + 1), self.dim) - 1]
+        return copy(self._boundaries[checked_degree(k, range(1, self.dim + 1), self.dim) - 1])
 
     @cached_property
     def _boundaries(self) -> tuple[csr_array, ...]:

@@ -4,8 +4,8 @@ import os
 import sys
 from collections.abc import Sequence
 
-from dec.cli.codes import INTERRUPTED, NOT_WRITTEN, OK, UNSOLVABLE, UNUSABLE, USAGE, UsageError
-from dec.cli.speaking import print_json, to_nowhere
+from dec.cli.codes import INTERRUPTED, NOT_WRITTEN, UNSOLVABLE, UNUSABLE, USAGE, UsageError
+from dec.cli.speaking import complain, print_json
 from dec.cli.words import parser
 from dec.errors import AccuracyError, DecError, OutputError, UnsolvableError
 
@@ -24,10 +24,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except DecError as error:
         return _fail(_code(error), type(error).__name__, str(error), as_json)
     except KeyboardInterrupt:
-        return _fail(INTERRUPTED, "interrupted", "interrupted; nothing was written", as_json)
-    except BrokenPipeError:
-        to_nowhere()  # whoever read the output has left
-        return OK
+        return _fail(INTERRUPTED, "interrupted", "interrupted", as_json)
     except MemoryError:
         return _fail(
             UNSOLVABLE, "memory", "this machine's memory is too small for that input; audit a part of it", as_json
@@ -35,9 +32,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except Exception as error:
         if os.environ.get("DEC_TRACEBACK"):
             raise
-        message = (
-            f"a fault of dec itself, nothing was written ({type(error).__name__}: {error}); DEC_TRACEBACK=1 shows where"
-        )
+        message = f"a fault of dec itself ({type(error).__name__}: {error}); DEC_TRACEBACK=1 shows where"
         return _fail(UNUSABLE, "fault", message, as_json)
 
 
@@ -50,8 +45,11 @@ def _code(error: DecError) -> int:
 def _fail(code: int, kind: str, message: str, as_json: bool) -> int:
     line = " ".join(message.split())
     if as_json:
-        print_json({"schema": "dec.error/1", "error": kind, "message": line, "exit": code})
+        try:
+            print_json({"schema": "dec.error/1", "error": kind, "message": line, "exit": code})
+        except OutputError:
+            complain(f"dec: {ascii(line)[1:-1]}\n")
     else:
         safe = "".join(c if c.isprintable() else c.encode("unicode_escape").decode("ascii") for c in line)
-        sys.stderr.write(f"dec: {safe}\n")
+        complain(f"dec: {safe}\n")
     return code

@@ -6,12 +6,12 @@ import json
 import os
 import sys
 from collections.abc import Callable, Iterable, Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from typing import Any
 
 from dec.errors import OutputError
 
-__all__ = ["patience", "print_json", "remark", "show", "to_nowhere", "write"]
+__all__ = ["complain", "patience", "print_json", "remark", "show", "to_nowhere", "write"]
 
 _SECONDS = 2.0
 
@@ -27,7 +27,7 @@ def show(options: argparse.Namespace, found: dict[str, Any], view: Callable[[dic
 def print_json(found: dict[str, Any]) -> None:
     """Print one JSON object on one line; in ASCII where the output's encoding is not Unicode."""
     plain = not _is_unicode()
-    write((json.dumps(found, ensure_ascii=plain, allow_nan=False) + "\n").encode(_encoding()))
+    write((json.dumps(found, ensure_ascii=plain, allow_nan=False) + "\n").encode(_encoding(), "backslashreplace"))
 
 
 def _print(parts: Iterable[Any]) -> None:
@@ -57,7 +57,7 @@ def _is_unicode() -> bool:
 
 
 def write(data: bytes) -> None:
-    """Write to standard output, all or an error; tests may stand a text stream in for it."""
+    """Write to standard output, all or an error; when whoever reads it has left, the rest goes nowhere in silence."""
     if sys.stdout is None:
         message = "standard output is closed; open it, or use --quiet for the exit code alone"
         raise OutputError(message)
@@ -69,7 +69,7 @@ def write(data: bytes) -> None:
             sys.stdout.write(data.decode(_encoding()))
         sys.stdout.flush()
     except BrokenPipeError:
-        raise
+        to_nowhere()
     except OSError as error:
         message = f"standard output cannot be written ({error.strerror})"
         to_nowhere()
@@ -79,7 +79,14 @@ def write(data: bytes) -> None:
 def remark(options: argparse.Namespace, notes: Iterable[str]) -> None:
     """Print notes on standard error, or nothing with --quiet."""
     if not options.quiet:
-        sys.stderr.write("".join(f"dec: {ascii(note)[1:-1]}\n" for note in notes))
+        complain("".join(f"dec: {ascii(note)[1:-1]}\n" for note in notes))
+
+
+def complain(text: str) -> None:
+    """Print on standard error; where that cannot be written the exit code has to do."""
+    with suppress(OSError, AttributeError):
+        sys.stderr.write(text)
+        sys.stderr.flush()
 
 
 def to_nowhere() -> None:
@@ -90,7 +97,7 @@ def to_nowhere() -> None:
 @contextmanager
 def patience(what: str, options: argparse.Namespace) -> Iterator[None]:
     """Show a moving bar on stderr once the work takes over two seconds, on a terminal only."""
-    if options.quiet or not sys.stderr.isatty():
+    if options.quiet or sys.stderr is None or not sys.stderr.isatty():
         yield
         return
     from threading import Timer

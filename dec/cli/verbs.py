@@ -1,8 +1,8 @@
 """The verbs: each reads, calls one public function, prints, and gives an exit code."""
 
 import argparse
+import os
 from collections.abc import Iterable
-from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from dec.cli.codes import FINDING, OK, UNSOLVABLE, UsageError
@@ -122,14 +122,19 @@ def _conclude(options: argparse.Namespace, audit: "Audit") -> int:
 
 def _read(options: argparse.Namespace) -> "Dataset":
     from dec.files.read import read
+    from dec.files.writing import refuse_target
 
-    outputs = [path for path in (getattr(options, name, None) for name in ("output", "vertices")) if path]
+    outputs = [path for path in (getattr(options, name, None) for name in ("output", "vertices")) if path is not None]
+    for path in outputs:
+        if path != "-" or path == getattr(options, "vertices", None):
+            refuse_target(path, force=options.force)
+    if len(outputs) == 2 and os.path.realpath(outputs[0]) == os.path.realpath(outputs[1]):
+        message = f"-o and --vertices name one file, {outputs[0]}; give each its own"
+        raise UsageError(message)
     for source in filter(None, (options.file, options.nodes)):
-        for path in outputs:
-            if Path(path).exists() and Path(source).exists() and Path(path).samefile(source):
-                message = f"{path} is an input; results never replace what they were made from, name another file"
-                raise OutputError(message)
-
+        if os.path.realpath(source) in {os.path.realpath(path) for path in outputs if path != "-"}:
+            message = f"{source} is an input; results never replace what they were made from, name another file"
+            raise OutputError(message)
     return read(options.file, options.nodes, decimal=options.decimal)
 
 

@@ -11,7 +11,7 @@ import numpy as np
 
 from dec.arrays import FloatArray, IntArray
 from dec.errors import InputError
-from dec.files.lines import TextLines
+from dec.files.lines import TextLines, whole_numbers
 from dec.files.msh_fields import fields_of
 from dec.files.msh_sections import MshFile
 from dec.files.parts import KINDS, Group, MeshParts, kind_named, ragged_of
@@ -97,7 +97,7 @@ def _nodes_old(file: MshFile) -> tuple[IntArray, FloatArray]:
     numbers = file.numbers(section, body)
     if file.is_text:
         rows = numbers.floats(4 * count).reshape(count, 4)
-        return rows[:, 0].astype(np.int64), rows[:, 1:].copy()
+        return whole_numbers(rows[:, 0], "a node number", f"{file.name}: $Nodes row {{}}".format), rows[:, 1:].copy()
     record = np.dtype([("tag", file.order + "i4"), ("point", file.order + "f8", 3)])
     if len(body) < count * record.itemsize:
         _refuse_count(file.name, "nodes", count, len(body) // record.itemsize)
@@ -210,7 +210,9 @@ def _rows_text(file: MshFile, body: bytes, first_line: int) -> tuple[IntArray, I
             f"{lines.text(filled[short[0]])!r}"
         )
         raise InputError(message)
-    return values.astype(np.int64), offsets[:-1], np.diff(offsets)
+    row = np.repeat(filled, np.diff(offsets))
+    whole = whole_numbers(values, "an entry of an element", lambda k: lines.place(row[k]))
+    return whole, offsets[:-1], np.diff(offsets)
 
 
 def _rows_binary(file: MshFile, body: bytes, _: int) -> tuple[IntArray, IntArray, IntArray]:

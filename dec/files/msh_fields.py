@@ -4,6 +4,7 @@ import numpy as np
 
 from dec.arrays import BoolArray, FloatArray, IntArray
 from dec.errors import InputError
+from dec.files.lines import whole_numbers
 from dec.files.msh_sections import MshFile, Section
 from dec.files.sources import printable
 
@@ -89,7 +90,8 @@ def _field(file: MshFile, section: Section) -> tuple[str, int, IntArray, FloatAr
         raise InputError(message)
     if file.is_text:
         table = numbers.floats(rows * (components + 1)).reshape(rows, components + 1)
-        return name, step, table[:, 0].astype(np.int64), table[:, 1:].copy()
+        place = f"{file.name}: ${section.name} {name!r} row {{}}".format
+        return name, step, whole_numbers(table[:, 0], "a number of a node or element", place), table[:, 1:].copy()
     record = np.dtype([("tag", file.order + "i4"), ("values", file.order + "f8", (components,))])
     if len(body) < rows * record.itemsize:
         message = f"{file.name}: ${section.name} {name!r} promises {rows} rows, found {len(body) // record.itemsize}"

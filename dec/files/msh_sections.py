@@ -7,7 +7,7 @@ import numpy as np
 
 from dec.arrays import AnyArray, FloatArray, IntArray
 from dec.errors import InputError
-from dec.files.lines import TextLines, parsed_numbers
+from dec.files.lines import TextLines, parsed_numbers, whole_numbers
 from dec.files.sources import Source
 
 __all__ = ["MshFile", "Numbers", "Section"]
@@ -37,15 +37,21 @@ class Numbers:
 
     def ints(self, count: int) -> IntArray:
         """The next numbers, written as 32-bit integers in binary; int64 array of shape (count,)."""
-        return self._take(count, "i4").astype(np.int64)
+        return self._whole(count, "i4")
 
     def sizes(self, count: int) -> IntArray:
         """The next numbers, written as the file's size type in binary; int64 array of shape (count,)."""
-        return self._take(count, self.wide).astype(np.int64)
+        return self._whole(count, self.wide)
 
     def floats(self, count: int) -> FloatArray:
         """The next numbers as float64 array of shape (count,)."""
         return self._take(count, "f8").astype(np.float64)
+
+    def _whole(self, count: int, kind: str) -> IntArray:
+        taken = self._take(count, kind)
+        if self.values is None:
+            return taken.astype(np.int64)
+        return whole_numbers(taken, "a number or count", f"{self.place}, number {{}}".format)
 
     def _take(self, count: int, kind: str) -> AnyArray:
         size = 1 if self.values is not None else np.dtype(kind).itemsize

@@ -169,7 +169,7 @@ def read_parquet(source: Source) -> tuple[dict[str, Column], tuple[str, ...]]:
     import pandas as pd
 
     try:
-        frame = pd.read_parquet(io.BytesIO(source.data), engine="pyarrow")
+        frame = pd.read_parquet(io.BytesIO(source.data), engine="pyarrow", dtype_backend="numpy_nullable")
     except ImportError:
         message = f"{source.name}: Parquet needs pyarrow; install pyarrow, or save the table as CSV"
         raise InputError(message) from None

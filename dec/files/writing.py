@@ -8,8 +8,9 @@ import stat
 from pathlib import Path
 
 from dec.errors import OutputError
+from dec.files.sources import printable
 
-__all__ = ["write_atomically"]
+__all__ = ["refuse_target", "write_atomically"]
 
 _REASONS = {
     errno.ENOSPC: "the disk is full",
@@ -73,6 +74,22 @@ def write_atomically(path: str | os.PathLike[str], data: bytes, *, force: bool =
         if isinstance(error, OSError):
             reason = _REASONS.get(error.errno or 0, error.strerror or str(error))
         message = f"{name} could not be written: {reason}; nothing was changed"
+        raise OutputError(message) from None
+
+
+def refuse_target(path: str | os.PathLike[str], *, force: bool = False) -> None:
+    """Nothing, or the OutputError that `write_atomically` would end in, as far as it can be told before writing."""
+    name = Path(path).name or str(path)
+    try:
+        target = Path(os.path.realpath(path))
+        _mode_of_old(target, name, force=force)
+        if not target.parent.is_dir():
+            message = f"{name}: the folder {Path(path).parent} does not exist; make it first"
+            raise OutputError(message)
+    except OutputError:
+        raise
+    except (OSError, ValueError) as error:
+        message = f"{printable(name[:80])} cannot be written: {error.strerror if isinstance(error, OSError) else error}"
         raise OutputError(message) from None
 
 

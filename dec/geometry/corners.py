@@ -19,6 +19,9 @@ _NAMES = ("vertex", "edge", "face", "cell")
 _FACES_AT_ONCE = 32_768
 _UNIT_CUBE = np.array([[0, 0, 0], [1, 0, 0], [1, 1, 0], [0, 1, 0], [0, 0, 1], [1, 0, 1], [1, 1, 1], [0, 1, 1]])
 
+# Beyond this, products such as the square of an area or of a volume leave float64.
+LARGEST = 1e60
+
 
 @dataclass(frozen=True, slots=True)
 class FaceBlock:
@@ -61,7 +64,8 @@ def positions(K: Complex) -> FloatArray:
     Raises
     ------
     InputError
-        If it has none, or solid cells in fewer than three coordinates.
+        If it has none, solid cells have fewer than three coordinates, or one is beyond 1e60, where squares of areas
+        and volumes overflow.
 
     Examples
     --------
@@ -73,6 +77,10 @@ def positions(K: Complex) -> FloatArray:
         raise InputError(message)
     if K.dim == 3 and K.points.shape[1] != 3:
         message = f"solid cells need points in 3 coordinates, got {K.points.shape[1]}"
+        raise InputError(message)
+    largest = max(-float(K.points.min(initial=0.0)), float(K.points.max(initial=0.0)))
+    if largest > LARGEST:
+        message = f"coordinates must stay within {LARGEST:g}, got {largest:g}; choose a larger unit"
         raise InputError(message)
     return K.points
 

@@ -11,7 +11,7 @@ from dec.arrays import FloatArray, float_array
 from dec.calculus.cochain import Cochain
 from dec.calculus.complex import Complex
 from dec.errors import InputError
-from dec.geometry.corners import cell_name, cross, edge_vectors, face_blocks, positions
+from dec.geometry.corners import LARGEST, cell_name, cross, edge_vectors, face_blocks, positions
 from dec.geometry.measures import face_area_vectors, is_flat
 from dec.geometry.neighbours import cells_at
 
@@ -191,6 +191,10 @@ def field_values(K: Complex, field: ArrayLike, at: str) -> FloatArray:
     if bad.any():
         at_cell = int(np.argmax(bad))
         message = f"field must be finite, got {array[at_cell].tolist()} at {cell_name(K, degree, at_cell)}"
+        raise InputError(message)
+    largest = max(-float(array.min(initial=0.0)), float(array.max(initial=0.0)))
+    if largest > LARGEST:
+        message = f"field values must stay within {LARGEST:g}, got {largest:g}; choose a larger unit"
         raise InputError(message)
     return array
 

@@ -62,7 +62,7 @@ def check_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
     if result["dim"] > 1:
         yield _item("surface" if result["dim"] == 2 else "solid", _kind(result))
     for name, text in result["facts"].items():
-        yield _item(name, text)
+        yield _item(name, visible(text))
     table = _table(("", "left"), ("statement", "left"), ("against", "right"), ("where", "left"))
     for finding in result["findings"]:
         mark = Text(_MARK[finding["holds"]], _STYLE[finding["holds"]])

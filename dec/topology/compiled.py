@@ -1,5 +1,6 @@
 """Loops that NumPy cannot express: run as plain Python on small input, compiled by Numba on large."""
 
+import pickle
 from collections.abc import Callable, Iterable
 from functools import cache, wraps
 from types import FunctionType
@@ -14,6 +15,8 @@ R = TypeVar("R")
 
 # Importing Numba costs as much as some 5,000 turns of an interpreted loop: below that the plain function is faster.
 SMALL = 5_000
+# What loading machine code from a truncated or foreign cache file raises.
+_DAMAGED = (EOFError, OSError, RuntimeError, pickle.UnpicklingError, AttributeError, ImportError)
 
 
 def compiled(kernel: Callable[P, R]) -> Callable[P, R]:
@@ -27,8 +30,12 @@ def compiled(kernel: Callable[P, R]) -> Callable[P, R]:
 
     @wraps(kernel)
     def run(*args: P.args, **kwargs: P.kwargs) -> R:
-        way = _plain if _size(args) <= SMALL else _machine
-        return cast("R", way(run)(*args, **kwargs))
+        if _size(args) <= SMALL:
+            return cast("R", _plain(run)(*args, **kwargs))
+        try:
+            return cast("R", _machine(run)(*args, **kwargs))
+        except _DAMAGED:  # the cached code did not load, so nothing has run yet
+            return cast("R", _afresh(run)(*args, **kwargs))
 
     run.interpreted = kernel  # type: ignore[attr-defined]
     return run
@@ -60,6 +67,14 @@ def _machine(run: Callable[..., Any]) -> Callable[..., Any]:
         return cast("Callable[..., Any]", numba.njit(cache=True, nogil=True)(kernel))
     except RuntimeError:  # no place where the cache could be kept
         return cast("Callable[..., Any]", numba.njit(nogil=True)(kernel))
+
+
+@cache
+def _afresh(run: Callable[..., Any]) -> Callable[..., Any]:
+    """Return the kernel compiled without a look at the cache."""
+    import numba
+
+    return cast("Callable[..., Any]", numba.njit(nogil=True)(_linked(run, _afresh)))
 
 
 def _linked(run: Callable[..., Any], way: Callable[[Callable[..., Any]], Callable[..., Any]]) -> Callable[..., Any]:

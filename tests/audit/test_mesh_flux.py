@@ -11,6 +11,7 @@ from hypothesis import strategies as st
 from dec.audit.questions import balance, loops
 from dec.calculus.complex import Complex, grid
 from dec.calculus.dataset import Dataset, Field
+from dec.errors import InputError
 
 from .mesh_shapes import dataset, noted, row, sample, with_field
 
@@ -246,3 +247,12 @@ def test_one_wrong_vector_in_a_linear_field_on_a_solid_is_not_found_to_balance(s
     assert audit.holds is not True
     assert "not decided" in audit.extra["verdict"] or "not balanced" in audit.extra["verdict"]
     assert balance(data, field="U", limit="1%").holds is False
+
+
+@pytest.mark.parametrize(("grown", "stretched"), [(1e160, 1.0), (1.0, 1e110)])
+def test_numbers_whose_sums_would_overflow_are_refused(grown: float, stretched: float):
+    part = sample("elbow.vtu")
+    K = Complex.from_cells(part.complex.solids, points=part.complex.points * stretched)
+    data = Dataset(K, fields={"U": {"vertices": Field("U", "vertices", part.field("flow").values * grown)}})
+    with pytest.raises(InputError, match="must stay within"):
+        balance(data, field="U")

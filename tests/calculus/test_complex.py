@@ -276,3 +276,12 @@ def test_a_complex_of_nothing_answers_every_question(K):
     assert set(K.betti()) == {0}
     assert (K.euler, K.n_components, K.is_manifold, K.is_orientable) == (0, 0, True, True)
     assert all(finding.holds for finding in K.check())
+
+
+def test_what_is_done_to_a_matrix_that_was_handed_out_does_not_reach_the_complex():
+    K = Complex.from_edges([0, 1], [1, 2])
+    taken = K.coboundary(0)
+    taken.data = abs(taken.data)
+    K.boundary(1).data = np.zeros(4, np.int8)
+    assert K.coboundary(0).toarray().tolist() == [[-1, 1, 0], [0, -1, 1]]
+    assert K.cochain(0, [5, 7, 4]).d().values.tolist() == [2, -3]

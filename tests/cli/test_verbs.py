@@ -490,3 +490,35 @@ def test_where_the_other_rows_stand_is_true_of_every_table(run, tmp_path):
 def test_a_column_of_dates_is_text_and_no_finding(run, tmp_path):
     (tmp_path / "e.csv").write_text("from,to,flow,day\nA,B,1,2026-01-05\nB,A,1,2026-01-06\n")
     assert run("check", tmp_path / "e.csv")[0] == 0
+
+
+def test_a_broken_pipe_keeps_the_exit_code_of_the_finding_and_of_the_error(junction):
+    for words, code in (((junction / "pipes.csv",), 1), ((junction / "none.csv", "--json"), 3)):
+        read, write = os.pipe()
+        os.close(read)
+        line = [sys.executable, "-m", "dec", "balance", *map(str, words), "--value", "flow"]
+        done = subprocess.run(line, stdout=write, stderr=subprocess.PIPE, check=False, timeout=120)
+        os.close(write)
+        assert (done.returncode, done.stderr) == (code, b"")
+
+
+@pytest.mark.skipif(not Path("/dev/full").exists(), reason="a device of Linux")
+@pytest.mark.parametrize("target", ["--json >/dev/full", "--json >&-", "2>/dev/full", "2>&-"])
+def test_an_error_keeps_its_exit_code_where_it_cannot_be_printed(junction, target):
+    line = f"{sys.executable} -m dec balance {junction / 'none.csv'} --value flow {target}"
+    done = subprocess.run(["sh", "-c", line], capture_output=True, check=False, timeout=120)
+    assert done.returncode == 3
+    assert b"Traceback" not in done.stderr
+
+
+def test_two_outputs_are_both_possible_or_neither_is_written(run, junction):
+    words = ("balance", junction / "pipes.csv", "--value", "flow", "--vertices", junction / "v.csv", "-o")
+    assert run(*words, junction / "none" / "o.csv")[0] == 5
+    assert run(*words, junction / ("n" * 300))[0] == 5
+    assert run(*words, junction / "v.csv")[0] == 2
+    assert not (junction / "v.csv").exists()
+
+
+def test_check_shows_hostile_ids_as_text(run, tmp_path):
+    (tmp_path / "e.csv").write_text("id,from,to\n\x1b]0;x\x07,A,B\n")
+    assert "\x1b" not in run("check", tmp_path / "e.csv")[1]

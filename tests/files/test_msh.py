@@ -259,3 +259,16 @@ def test_a_broken_file_is_refused_with_its_place(text: bytes, words: str, tmp_pa
     (tmp_path / "t.msh").write_bytes(text)
     with pytest.raises(InputError, match=words):
         read(tmp_path / "t.msh")
+
+
+@pytest.mark.parametrize(
+    ("nodes", "element"),
+    [("2.7 1 0 0", "1 2 2 1 1 1 2 3"), ("2 1 0 0", "1 2 2 1 1 1 3 2.5"), ("2 1 0 0", "1 2.9 2 1 1 1 2 3")],
+)
+def test_a_number_that_must_be_whole_is_not_cut_to_one(nodes: str, element: str):
+    text = (
+        "$MeshFormat\n2.2 0 8\n$EndMeshFormat\n$Nodes\n3\n1 0 0 0\n" + nodes + "\n3 0 1 0\n$EndNodes\n"
+        "$Elements\n1\n" + element + "\n$EndElements\n"
+    )
+    with pytest.raises(InputError, match="must be a whole number"):
+        read_msh(Source("part.msh", text.encode()))

@@ -4,8 +4,10 @@ import csv
 import importlib.util
 import io
 from collections.abc import Callable
+from pathlib import Path
 
 import numpy as np
+import pandas as pd
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
@@ -255,3 +257,12 @@ def test_a_parquet_file_reads_back():
     assert columns["flow"].numbers().tolist() == [1.5]
     with pytest.raises(InputError, match="cannot be read as Parquet"):
         read_parquet(Source("t.parquet", out.getvalue()[:40]))
+
+
+@pytest.mark.skipif(importlib.util.find_spec("pyarrow") is None, reason="pyarrow is an extra")
+def test_parquet_integers_beside_empty_cells_stay_exact(tmp_path: Path):
+    frame = pd.DataFrame({"from": ["A", "B"], "to": ["B", "A"], "flow": pd.array([2**60 + 1, None], dtype="Int64")})
+    frame.to_parquet(tmp_path / "e.parquet")
+    columns, _ = read_parquet(Source("e.parquet", (tmp_path / "e.parquet").read_bytes()))
+    decimals = columns["flow"].decimals()
+    assert (int(decimals.integers[0]), decimals.present.tolist()) == (2**60 + 1, [True, False])

@@ -1,7 +1,9 @@
 """Every compiled loop gives the same whether it is interpreted or compiled."""
 
 import importlib
+import os
 import pkgutil
+import subprocess
 import sys
 
 import numpy as np
@@ -146,3 +148,20 @@ def test_a_loop_is_compiled_without_a_cache_where_none_can_be_written(monkeypatc
     run = compiled(lambda values: values.max())
     assert run(np.arange(SMALL + 1)) == SMALL
     assert asked == [True, False]
+
+
+def test_a_damaged_cache_of_machine_code_is_passed_over(tmp_path):
+    program = (
+        "import numpy as np\nfrom dec.topology.graphs import components\n"
+        "print(components(np.arange(9000), np.arange(1, 9001), 9001)[0])"
+    )
+    environment = {**os.environ, "NUMBA_CACHE_DIR": str(tmp_path)}
+    for _ in range(2):
+        done = subprocess.run(
+            [sys.executable, "-c", program], env=environment, capture_output=True, text=True, check=False, timeout=300
+        )
+        assert (done.returncode, done.stdout) == (0, "1\n"), done.stderr
+        kept = list(tmp_path.rglob("*.nbi"))
+        assert kept
+        for file in kept:
+            file.write_bytes(b"")
