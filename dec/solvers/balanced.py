@@ -4,11 +4,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from dec.arrays import BoolArray, FloatArray, IntArray
+from dec.arrays import AnyArray, BoolArray, FloatArray
 from dec.solvers.pairs import UNIT, pair_sum
 from dec.solvers.posed import Posed
 from dec.topology.compiled import compiled
-from dec.topology.graphs import Forest, joined, spanning_forest
+from dec.topology.edges import blocks, index_type
+from dec.topology.graphs import joined
 
 __all__ = ["BalancedFlow", "Carrier"]
 
@@ -50,10 +51,10 @@ class Carrier:
     ----------
     number : int64 array, shape (n0,)
         Number of each vertex after those of fixed potential were joined.
-    chosen, edges : int64 array
-        Edges of the forest, ascending, and by the vertex below them.
-    forest : Forest
-        Of the joined vertices and the chosen edges, in that order.
+    count : int
+        Vertices afterwards.
+    chosen, edges : int array
+        Edges of the forest, ascending, and in the order in which they carry: from the leaves to the roots.
 
     Notes
     -----
@@ -64,14 +65,18 @@ class Carrier:
         fixed = np.flatnonzero(problem.is_fixed)
         self.problem = problem
         self.number, self.count = joined(fixed, len(problem.label))
-        self._tail, self._head = tail, head = self.number[problem.tail], self.number[problem.head]
-        order = np.argsort(-_power_of_two(strength), kind="stable")
-        self.chosen = chosen = np.flatnonzero(_forest_edges(order, tail, head, np.arange(self.count)))
-        forest = spanning_forest(tail[chosen], head[chosen], self.count, roots=self.number[fixed[:1]])
-        self.forest: Forest = forest
-        self.below = np.flatnonzero(forest.via >= 0)
-        self.edges = chosen[forest.via[self.below]]
-        self.sign = np.where(tail[self.edges] == self.below, 1.0, -1.0)
+        itype = index_type(self.count, len(strength))
+        renumbered = (self.number[ends] if len(fixed) > 1 else ends for ends in (problem.tail, problem.head))
+        self._tail, self._head = (np.asarray(ends, itype) for ends in renumbered)
+        is_chosen = _forest_edges(
+            _strongest_first(strength, itype), self._tail, self._head, np.arange(self.count, dtype=itype)
+        )
+        self.chosen = chosen = np.flatnonzero(is_chosen)
+        root = int(self.number[fixed[0]]) if len(fixed) else -1
+        self._order, self._parent, self._via = _leaves_first(
+            self._tail, self._head, chosen.astype(itype), self.count, root
+        )
+        self.edges = self._via[self._order]
 
     @property
     def is_whole(self) -> bool:
@@ -91,10 +96,10 @@ class Carrier:
         float64 array, shape (n0, m)
             Zero where the potential is fixed.
         """
-        columns = [self._surplus(value[:, j], rest[:, j], j) for j in range(value.shape[1])]
-        result = np.zeros_like(self.problem.source)
-        for j, (high, low, _) in enumerate(columns):
-            result[:, j] = (high + low)[self.number]
+        result = np.empty_like(self.problem.source)
+        for j in range(value.shape[1]):
+            surplus = self._surplus(value[:, j], rest[:, j], j)
+            result[:, j] = (surplus[:, 0] + surplus[:, 1])[self.number]
         result[self.problem.is_fixed] = 0.0
         return result
 
@@ -117,40 +122,38 @@ class Carrier:
         at most 2^-53 of its size at every step, and is added up in `slack`. Source: Ogita, Rump and Oishi, Accurate
         sum and dot product, SIAM J. Sci. Comput. 26 (2005), algorithm 4.4 (from memory).
         """
-        new_value, new_rest = pair_sum(value, rest)
-        slack, carried = np.zeros_like(value), np.empty((len(self.edges), value.shape[1]))
+        new_value, new_rest, slack = (np.zeros(value.shape, order="F") for _ in range(3))
+        carried = np.empty((len(self.edges), value.shape[1]), order="F")
+        for part in blocks(len(value)):
+            new_value[part], new_rest[part] = pair_sum(value[part], rest[part])
         for j in range(value.shape[1]):
-            high, low, left_out = self._surplus(new_value[:, j], new_rest[:, j], j)
-            _add_to_parents(self.forest.order, self.forest.parent, high, low, left_out)
-            along, along_rest = pair_sum(self.sign * high[self.below], self.sign * low[self.below])
-            carried[:, j] = along
-            new_value[self.edges, j], rounding = pair_sum(new_value[self.edges, j], along)
-            small = (new_rest[self.edges, j], rounding, along_rest)
-            new_rest[self.edges, j] = sum(small)
-            # adding up the small parts rounds too, and so did adding up the slack
-            slack[self.edges, j] = 1.001 * left_out[self.below] + 2 * UNIT * sum(np.abs(part) for part in small)
+            flow = new_value[:, j], new_rest[:, j], slack[:, j], carried[:, j]
+            surplus = self._surplus(*flow[:2], j)
+            _carry(self._order, self._parent, self._via, self._tail, surplus, *flow)
         return BalancedFlow(new_value, new_rest, slack, carried)
 
-    def _surplus(self, value: FloatArray, rest: FloatArray, column: int) -> tuple[FloatArray, FloatArray, FloatArray]:
+    def _surplus(self, value: FloatArray, rest: FloatArray, column: int) -> FloatArray:
         """Return what every vertex has to send away: rounded, the rest, and what is missing from both at most."""
-        high, low, slack = np.zeros(self.count), np.zeros(self.count), np.zeros(self.count)
+        surplus = np.zeros((self.count, 3))
         # free vertices have a number of their own; what is put in where the potential is fixed does not matter
-        high[self.number] = self.problem.source[:, column]
-        low[self.number] = self.problem.source_rest[:, column]
-        slack[self.number] = self.problem.source_doubt[:, column]
-        _add_flows(self._tail, self._head, np.ascontiguousarray(value), np.ascontiguousarray(rest), high, low, slack)
-        return high, low, slack
+        given = (self.problem.source, self.problem.source_rest, self.problem.source_doubt)
+        for k, values in enumerate(given):
+            surplus[self.number, k] = values[:, column]
+        _add_flows(self._tail, self._head, np.ascontiguousarray(value), np.ascontiguousarray(rest), surplus)
+        return surplus
 
 
-def _power_of_two(strength: FloatArray) -> IntArray:
-    """Return the class of each strength: its binary exponent; what is not positive comes last."""
+def _strongest_first(strength: FloatArray, itype: type[np.signedinteger]) -> AnyArray:
+    """Return the edges by binary exponent of their strength, large first; what is not positive comes last."""
     exponent = np.frexp(np.maximum(strength, 0.0))[1].astype(np.int16)
     exponent[strength <= 0] = -2000
-    return exponent  # type: ignore[return-value]
+    if (exponent == exponent[:1]).all():
+        return np.arange(len(strength), dtype=itype)
+    return np.argsort(-exponent, kind="stable").astype(itype)
 
 
 @compiled
-def _forest_edges(order: IntArray, tail: IntArray, head: IntArray, parent: IntArray) -> BoolArray:
+def _forest_edges(order: AnyArray, tail: AnyArray, head: AnyArray, parent: AnyArray) -> BoolArray:
     """Return which edges, taken in this order, join two parts that nothing joined before."""
     inside = np.zeros(len(tail), np.bool_)
     for k in range(len(order)):
@@ -169,39 +172,87 @@ def _forest_edges(order: IntArray, tail: IntArray, head: IntArray, parent: IntAr
 
 
 @compiled
-def _add_flows(
-    tail: IntArray, head: IntArray, value: FloatArray, rest: FloatArray, high: FloatArray, low: FloatArray,
-    slack: FloatArray,
-) -> None:  # fmt: skip
+def _leaves_first(
+    tail: AnyArray, head: AnyArray, edges: AnyArray, count: int, root: int
+) -> tuple[AnyArray, AnyArray, AnyArray]:
+    """Return the vertices of a forest that have a parent, each before it, and every vertex's parent and edge to it.
+
+    Leaves are taken off one by one, the root excepted; what is left is the root of its tree. The edges at a vertex
+    are kept as their number and their bitwise sum, which is the last edge when there is but one.
+    """
+    degree = np.zeros(count, edges.dtype)
+    via = np.zeros(count, edges.dtype)
+    parent = np.full(count, -1, edges.dtype)
+    order = np.empty(len(edges), edges.dtype)
+    for k in range(len(edges)):
+        e = edges[k]
+        for v in (tail[e], head[e]):
+            degree[v] += 1
+            via[v] ^= e
+    filled = 0
+    for start in range(count):
+        v = start
+        while degree[v] == 1 and v != root:
+            e = via[v]
+            p = head[e] if tail[e] == v else tail[e]
+            order[filled], parent[v], degree[v] = v, p, 0
+            filled += 1
+            degree[p] -= 1
+            via[p] ^= e
+            if p > start:  # its turn comes
+                break
+            v = p
+    return order, parent, via
+
+
+@compiled
+def _add_flows(tail: AnyArray, head: AnyArray, value: FloatArray, rest: FloatArray, surplus: FloatArray) -> None:
     """Add flows at heads, take them off at tails: rounded sums, the sums of their errors, and what those may lack."""
     for e in range(len(tail)):
         large, small = value[e], rest[e]
         for v in (head[e], tail[e]):
-            a = high[v]
+            a = surplus[v, 0]
             once = a + large
             part = once - a
-            error = low[v] + ((a - (once - part)) + (large - part))
+            error = surplus[v, 1] + ((a - (once - part)) + (large - part))
             twice = once + small
             part = twice - once
-            low[v] = error + ((once - (twice - part)) + (small - part))
-            slack[v] += UNIT * (abs(error) + abs(low[v]))
-            high[v] = twice
+            low = error + ((once - (twice - part)) + (small - part))
+            surplus[v, 0], surplus[v, 1] = twice, low
+            surplus[v, 2] += UNIT * (abs(error) + abs(low))
             large, small = -large, -small
 
 
 @compiled
-def _add_to_parents(order: IntArray, parent: IntArray, high: FloatArray, low: FloatArray, slack: FloatArray) -> None:
-    """Add to every vertex what its descendants hold, leaves first, in the same three parts."""
-    for k in range(len(order) - 1, -1, -1):
-        v = order[k]
-        p = parent[v]
-        if p < 0:
-            continue
-        a, b = high[p], high[v]
+def _carry(
+    order: AnyArray, parent: AnyArray, via: AnyArray, tail: AnyArray, surplus: FloatArray, value: FloatArray,
+    rest: FloatArray, slack: FloatArray, carried: FloatArray,
+) -> None:  # fmt: skip
+    """Send what every vertex has, and its descendants sent it, along its edge to its parent, leaves first.
+
+    What arrives is kept in the same three parts. What is sent is added to the flow; adding up its small parts rounds
+    too, and so did adding up the slack.
+    """
+    for k in range(len(order)):
+        v, p, e = order[k], parent[order[k]], via[order[k]]
+        a, b = surplus[p, 0], surplus[v, 0]
         total = a + b
         part = total - a
-        low[p] += (a - (total - part)) + (b - part)
-        slack[p] += slack[v] + UNIT * abs(low[p])
-        low[p] += low[v]
-        slack[p] += UNIT * abs(low[p])
-        high[p] = total
+        low = surplus[p, 1] + ((a - (total - part)) + (b - part))
+        doubt = surplus[p, 2] + surplus[v, 2] + UNIT * abs(low)
+        low += surplus[v, 1]
+        surplus[p, 0], surplus[p, 1], surplus[p, 2] = total, low, doubt + UNIT * abs(low)
+        sent, sent_low = b, surplus[v, 1]
+        if tail[e] != v:
+            sent, sent_low = -sent, -sent_low
+        along = sent + sent_low
+        part = along - sent
+        along_rest = (sent - (along - part)) + (sent_low - part)
+        carried[k] = along
+        a = value[e]
+        total = a + along
+        part = total - a
+        rounding = (a - (total - part)) + (along - part)
+        value[e] = total
+        slack[e] = 1.001 * surplus[v, 2] + 2 * UNIT * (abs(rest[e]) + abs(rounding) + abs(along_rest))
+        rest[e] = rest[e] + rounding + along_rest

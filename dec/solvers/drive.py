@@ -5,10 +5,10 @@ import numpy as np
 from dec.arrays import FloatArray
 from dec.solvers.pairs import UNIT, pair_product, pair_sum
 from dec.solvers.posed import Posed
+from dec.topology.edges import blocks
 
-__all__ = ["BLOCK", "downhill_flow", "drive_pair"]
+__all__ = ["downhill_flow", "drive_pair"]
 
-BLOCK = 1 << 15  # edges at a time, so that what is between stays in the processor's cache
 _SMALLEST = 1e-280
 _TINY = 5e-324
 
@@ -66,8 +66,7 @@ def downhill_flow(problem: Posed, potential: FloatArray) -> tuple[FloatArray, Fl
     """
     shape = (len(problem.edges), potential.shape[1])
     value, rest = np.empty(shape), np.empty(shape)
-    for first in range(0, len(problem.edges), BLOCK):
-        part = slice(first, first + BLOCK)
+    for part in blocks(len(problem.edges)):
         tail, head = potential[problem.tail[part]], potential[problem.head[part]]
         value[part], rest[part], _ = drive_pair(problem.conductance[part, None], head, tail)
     return value, rest

@@ -6,7 +6,7 @@ from dec.arrays import FloatArray
 from dec.solvers.balanced import BalancedFlow, Carrier
 from dec.solvers.edge_law import drop_of, flow_of
 from dec.solvers.outcome import centred
-from dec.topology.graphs import tree_potentials
+from dec.topology.graphs import spanning_forest, tree_potentials
 
 __all__ = ["BECAUSE", "forest_solution"]
 
@@ -35,7 +35,7 @@ def forest_solution(carrier: Carrier) -> tuple[FloatArray, BalancedFlow]:
     >>> forest_solution(Carrier(problem, problem.conductance))[0].tolist()
     [[10.000000000003], [10.0], [7.0]]
     """
-    problem, forest, chosen = carrier.problem, carrier.forest, carrier.chosen
+    problem, chosen = carrier.problem, carrier.chosen
     c, n, start = problem.conductance[:, None], problem.exponent[:, None], problem.start
     between_fixed = problem.is_fixed[problem.tail] & problem.is_fixed[problem.head]
     driven = np.zeros((len(problem.edges), start.shape[1]))
@@ -45,6 +45,8 @@ def forest_solution(carrier: Carrier) -> tuple[FloatArray, BalancedFlow]:
     difference += np.where(problem.is_fixed[problem.tail, None], start[problem.tail], 0.0)
     difference -= np.where(problem.is_fixed[problem.head, None], start[problem.head], 0.0)
     tail, head = carrier.number[problem.tail[chosen]], carrier.number[problem.head[chosen]]
+    roots = carrier.number[np.flatnonzero(problem.is_fixed)[:1]]
+    forest = spanning_forest(tail, head, carrier.count, roots=roots)
     potential = np.empty_like(start)
     for j in range(start.shape[1]):
         column = np.ascontiguousarray(difference[chosen, j])

@@ -84,16 +84,15 @@ def given_exponents(network: Complex, given: ArrayLike) -> FloatArray:
     if powers.shape not in {(), (n_edges,)}:
         message = f"exponent must be one number, or one for each of {n_edges} edges, got shape {powers.shape}"
         raise InputError(message)
-    powers = np.broadcast_to(powers, (n_edges,))
     bad = ~((powers >= 1.0) & (powers <= 2.0))
     if bad.any():
-        edge = int(np.argmax(bad))
+        where = f" at {_edge_name(network, int(np.argmax(bad)))}" if n_edges else ""
         message = (
             f"exponent must be 1 to 2 (1 for proportional, 1.852 for Hazen-Williams, 2 for turbulent loss), "
-            f"got {powers[edge]} at {_edge_name(network, edge)}"
+            f"got {powers[bad][0]}{where}"
         )
         raise InputError(message)
-    return powers
+    return np.broadcast_to(powers, (n_edges,))
 
 
 def given_sources(network: Complex, given: Source) -> tuple[FloatArray, bool]:

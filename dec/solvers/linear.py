@@ -12,6 +12,7 @@ from dec.solvers.outcome import Outcome, centred, norm, relative
 from dec.solvers.pairs import UNIT
 from dec.solvers.posed import Posed
 from dec.solvers.system import System
+from dec.topology.edges import blocks
 
 __all__ = ["solve_linear"]
 
@@ -61,10 +62,12 @@ def solve_linear(problem: Posed, rtol: float, method: str | Method) -> Outcome:
     bound = linear_bound(problem, potential, flow) if problem.is_positive else None
     energy = None if bound is None else energy_between(problem, potential, flow, bound)
     residual, backward = relative(left, size), _backward_error(problem, left, potential, size)
-    at_floor = (backward <= _FLOORS * 2 * UNIT) & (residual <= _FLOORS * _floor(problem, potential, size))
-    if bound is not None and energy is not None:
-        at_floor &= (bound <= _LOOSEST * np.sqrt(energy[1])) | (bound <= _FLOORS * _rounding(problem, potential))
-    reached = bool(((residual <= rtol) | at_floor).all())
+    reached = bool((residual <= rtol).all())
+    if not reached:
+        at_floor = (backward <= _FLOORS * 2 * UNIT) & (residual <= _FLOORS * _floor(problem, potential, size))
+        if bound is not None and energy is not None:
+            at_floor &= (bound <= _LOOSEST * np.sqrt(energy[1])) | (bound <= _FLOORS * _rounding(problem, potential))
+        reached = bool(((residual <= rtol) | at_floor).all())
     achieved = float(residual.max(initial=0.0))
     return Outcome(potential, flow, residual, backward, bound, energy, *how, achieved, reached)
 
@@ -93,17 +96,25 @@ def _refined(
 
 def _balanced(carrier: Carrier, system: System, potential: FloatArray) -> BalancedFlow:
     """Return a flow near -c du that balances: most of what it lacks goes the best way, the rest along a forest."""
-    problem, c = carrier.problem, carrier.problem.conductance[:, None]
+    problem = carrier.problem
     value, rest = downhill_flow(problem, potential)
-    weight, moved = np.sqrt(np.abs(c)), np.zeros(value.shape[1])
+    weight, moved = np.sqrt(np.abs(problem.conductance[carrier.edges, None])), np.zeros(value.shape[1])
     for _ in range(_MOST_CORRECTIONS):
-        step = problem.differences(system.solve(carrier.lacking(value, rest), _CORRECTION))
-        moved += norm(weight * step)
-        rest -= c * step
+        moved += _move(problem, rest, system.solve(carrier.lacking(value, rest), _CORRECTION))
         balanced = carrier.balance(value, rest)
-        if (norm(balanced.carried / weight[carrier.edges]) <= _CARRIED * moved).all():
+        if (norm(balanced.carried / weight) <= _CARRIED * moved).all():
             break
     return balanced
+
+
+def _move(problem: Posed, flow: FloatArray, change: FloatArray) -> FloatArray:
+    """Take off the flow what a change of the potentials drives back; return the size of that in the energy norm."""
+    sizes = []
+    for part in blocks(len(flow)):
+        c, step = problem.conductance[part, None], change[problem.head[part]] - change[problem.tail[part]]
+        flow[part] -= c * step
+        sizes.append(norm(np.sqrt(np.abs(c)) * step))
+    return norm(np.array(sizes).reshape(-1, flow.shape[1]))
 
 
 def _backward_error(problem: Posed, left: FloatArray, potential: FloatArray, size: FloatArray) -> FloatArray:

@@ -10,7 +10,7 @@ from dec.arrays import BoolArray, FloatArray
 from dec.errors import AccuracyError
 from dec.solvers.problem import LinearProblem
 
-__all__ = ["Answer", "Check", "Method", "Prepared", "answer_of"]
+__all__ = ["Answer", "Check", "Method", "Prepared", "answer_of", "power_above"]
 
 _EPS = float(np.finfo(np.float64).eps)
 # Normwise backward error, and residual over the rounding of one product, at which no solver in float64 does better.
@@ -170,6 +170,20 @@ def answer_of(x: FloatArray, check: Check, iterations: int, history: FloatArray,
         )
         raise AccuracyError(message, answer)
     return answer
+
+
+def power_above(values: FloatArray) -> float:
+    """The power of two just above the largest size, 1 where all are zero: dividing by it rounds nothing.
+
+    Libraries that take what is very small for zero, or square what is very large, are given numbers over this.
+
+    Examples
+    --------
+    >>> power_above(np.array([-5.0, 3.0])), power_above(np.zeros(2))
+    (8.0, 1.0)
+    """
+    largest = float(np.abs(values).max(initial=0.0))
+    return float(np.ldexp(1.0, min(int(np.frexp(largest)[1]), 1023))) if largest else 1.0
 
 
 def _worst(values: FloatArray) -> float:

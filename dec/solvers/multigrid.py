@@ -12,7 +12,7 @@ from scipy.sparse import csr_array
 
 from dec.arrays import FloatArray
 from dec.errors import AccuracyError, InputError
-from dec.solvers.method import Answer, Check, answer_of
+from dec.solvers.method import Answer, Check, answer_of, power_above
 from dec.solvers.problem import LinearProblem
 
 __all__ = ["Multigrid"]
@@ -20,6 +20,7 @@ __all__ = ["Multigrid"]
 _MOST_CYCLES = 300
 _MOST_RESTARTS = 3
 _BREAKDOWN = (ArithmeticError, ValueError, RuntimeError, IndexError, np.linalg.LinAlgError)
+_MODERATE = (1e-60, 1e60)  # sizes of entries whose products no loop of PyAMG takes for zero or infinite
 
 
 @dataclass(frozen=True, slots=True)
@@ -57,12 +58,17 @@ class Multigrid:
 
         kept = problem.grounded
         if not len(kept):
-            return Hierarchy(problem, None)
+            return Hierarchy(problem, None, 1.0)
         inner = csr_array(problem.matrix if len(kept) == problem.n else problem.matrix[kept][:, kept])
         inner.sort_indices()
+        scale = power_above(inner.data)
+        if _MODERATE[0] < scale < _MODERATE[1]:
+            scale = 1.0
+        else:
+            inner = csr_array((inner.data / scale, inner.indices, inner.indptr), shape=inner.shape)
         with _fenced():
             try:
-                return Hierarchy(problem, getattr(pyamg, f"{self.kind}_solver")(inner))
+                return Hierarchy(problem, getattr(pyamg, f"{self.kind}_solver")(inner), scale)
             except _BREAKDOWN as error:
                 message = f"multigrid ({self.kind}) broke down on {problem.n} unknowns: {error}; take elimination"
                 raise AccuracyError(message) from None
@@ -70,10 +76,11 @@ class Multigrid:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Hierarchy:
-    """A hierarchy of coarser and coarser matrices, ready to solve."""
+    """A hierarchy of coarser and coarser matrices, ready to solve, for the matrix over `scale`, a power of two."""
 
     problem: LinearProblem
     levels: Any
+    scale: float
     name: ClassVar[str] = "multigrid"
     notes: ClassVar[tuple[str, ...]] = ()
 
@@ -106,15 +113,16 @@ class Hierarchy:
                 if check.met or len(history) > limit:
                     break
                 left = self.problem.balanced(check.left)[kept]
+                size = power_above(left)
                 norms: list[float] = []
                 aim = 0.5 * rtol / max(float(check.residual[0]), rtol)
                 most = limit + 1 - len(history)
                 try:
-                    step = self.levels.solve(left, tol=aim, accel="cg", maxiter=most, residuals=norms)
+                    step = self.levels.solve(left / size, tol=aim, accel="cg", maxiter=most, residuals=norms)
                 except _BREAKDOWN:
                     break
                 trial = np.array(x)
-                trial[kept] += step
+                trial[kept] += step * (size / self.scale)
                 trial = self.problem.balanced(trial)
                 check_then = Check.of(self.problem, trial, b, rtol)
                 scale = history[-1] / norms[0] if norms and norms[0] > 0 else 0.0
@@ -134,7 +142,7 @@ def _fenced() -> Iterator[None]:
     state = np.random.get_state()  # noqa: NPY002
     np.random.seed(0)  # noqa: NPY002
     try:
-        with warnings.catch_warnings():
+        with warnings.catch_warnings(), np.errstate(all="ignore"):
             warnings.simplefilter("ignore")
             yield
     finally:

@@ -37,7 +37,7 @@ def solve_network(
     Raises
     ------
     InputError, UnsolvableError, AccuracyError
-        As `solve_poisson`; a cell that cannot be used is named with its file and line.
+        As `solve_poisson`; a cell that cannot be used is named with its file and line. A mesh is refused.
 
     Examples
     --------
@@ -47,6 +47,13 @@ def solve_network(
     >>> solve_network(Dataset.from_frames(edges, nodes), "put_in", fixed="level").potential.values.tolist()
     [9.0, 7.0, 5.0]
     """
+    if 1 not in data.columns:
+        name = data.inputs[0].name if data.inputs else "the data"
+        message = (
+            f"solve takes an edge table (from, to) and a node table with the sources, but {name} is a mesh; in Python, "
+            "solve_poisson(complex, source, conductance=Metric(complex)) solves on a mesh"
+        )
+        raise InputError(message)
     held = np.full(data.complex.counts[0], np.nan) if fixed is None else data.column(fixed, 0).numbers()
     is_held = ~np.isnan(held)
     amount = _without_gaps(data, source, 0, allowed=is_held)

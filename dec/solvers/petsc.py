@@ -1,5 +1,6 @@
 """PETSc's multigrid on one process, where petsc4py is installed."""
 
+import weakref
 from dataclasses import dataclass
 from typing import Any, ClassVar, Literal
 
@@ -8,8 +9,8 @@ from numpy.typing import ArrayLike
 from scipy.sparse import csr_array
 
 from dec.arrays import FloatArray
-from dec.errors import InputError
-from dec.solvers.method import Answer, Check, answer_of
+from dec.errors import AccuracyError, InputError
+from dec.solvers.method import Answer, Check, answer_of, power_above
 from dec.solvers.problem import LinearProblem
 
 __all__ = ["Petsc"]
@@ -24,6 +25,8 @@ class Petsc:
     Parameters
     ----------
     kind : "gamg" or "hypre"
+        Aggregation, or the classical kind from the library of that name, which bears conductances that are farther
+        apart.
     """
 
     kind: Literal["gamg", "hypre"] = "gamg"
@@ -40,7 +43,9 @@ class Petsc:
         Raises
         ------
         InputError
-            If petsc4py is not installed.
+            If petsc4py is not installed, or was built without this kind.
+        AccuracyError
+            If PETSc could not set its multigrid up.
         """
         try:
             from petsc4py import PETSc
@@ -49,26 +54,39 @@ class Petsc:
             raise InputError(message) from None
         kept = problem.grounded
         if not len(kept):
-            return PetscReady(problem, None, None)
+            return PetscReady(problem, None, None, 1.0, RuntimeError)
         inner = csr_array(problem.matrix[kept][:, kept])
+        scale = power_above(inner.data)
         positions = inner.indptr.astype(PETSc.IntType), inner.indices.astype(PETSc.IntType)
-        matrix = PETSc.Mat().createAIJ(size=inner.shape, csr=(*positions, inner.data), comm=PETSc.COMM_SELF)
+        matrix = PETSc.Mat().createAIJ(size=inner.shape, csr=(*positions, inner.data / scale), comm=PETSc.COMM_SELF)
         solver = PETSc.KSP().create(comm=PETSc.COMM_SELF)
+        ready = PetscReady(problem, solver, matrix, scale, PETSc.Error)
+        # what Python drops, PETSc only marks for a clean-up that never comes
+        weakref.finalize(ready, _destroy, solver, matrix).atexit = False
+        try:
+            solver.getPC().setType(self.kind)
+        except PETSc.Error:
+            message = f'this PETSc was built without "{self.kind}"; take kind "gamg" or another method'
+            raise InputError(message) from None
         solver.setOperators(matrix)
         solver.setType("cg")
         solver.setNormType(PETSc.KSP.NormType.UNPRECONDITIONED)
-        solver.getPC().setType(self.kind)
-        solver.setUp()
-        return PetscReady(problem, solver, matrix)
+        try:
+            solver.setUp()
+        except PETSc.Error as error:
+            raise AccuracyError(_failure(self.kind, error)) from None
+        return ready
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(frozen=True, slots=True, eq=False, weakref_slot=True)
 class PetscReady:
-    """A PETSc solver that has been set up."""
+    """A PETSc solver that has been set up, for the matrix over `scale`, a power of two."""
 
     problem: LinearProblem
     solver: Any
     matrix: Any
+    scale: float
+    failure: type[Exception]
     name: ClassVar[str] = "petsc"
     notes: ClassVar[tuple[str, ...]] = ()
 
@@ -91,9 +109,26 @@ class PetscReady:
         if self.solver is None or not b.any():
             return x, 0
         kept = self.problem.grounded
+        inner = self.problem.balanced(b)[kept]
+        size = power_above(inner)
         right, answer = self.matrix.createVecs()
-        right.setArray(self.problem.balanced(b)[kept])
-        self.solver.setTolerances(rtol=0.5 * rtol, max_it=limit)
-        self.solver.solve(right, answer)
-        x[kept] = answer.getArray()
+        try:
+            right.setArray(inner / size)
+            self.solver.setTolerances(rtol=0.5 * rtol, atol=0.0, max_it=limit)
+            self.solver.solve(right, answer)
+            x[kept] = answer.getArray() * (size / self.scale)
+        except self.failure as error:
+            raise AccuracyError(_failure(self.solver.getPC().getType(), error)) from None
+        finally:
+            _destroy(right, answer)
         return self.problem.balanced(x), int(self.solver.getIterationNumber())
+
+
+def _failure(kind: str, error: Exception) -> str:
+    reason = str(error).strip().splitlines()[-1:] or [type(error).__name__]  # its other lines say where in PETSc
+    return f"petsc could not use its multigrid {kind} ({reason[0]}); take another method"
+
+
+def _destroy(*objects: Any) -> None:
+    for item in objects:
+        item.destroy()

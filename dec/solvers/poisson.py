@@ -9,7 +9,15 @@ from dec.arrays import FloatArray
 from dec.calculus.cochain import Cochain
 from dec.calculus.complex import Complex
 from dec.errors import AccuracyError, InputError
-from dec.solvers.given import Conductance, Fixed, Source
+from dec.solvers.given import (
+    Conductance,
+    Fixed,
+    Source,
+    given_conductances,
+    given_exponents,
+    given_fixed,
+    given_sources,
+)
 from dec.solvers.linear import solve_linear
 from dec.solvers.method import Method
 from dec.solvers.outcome import Outcome
@@ -67,7 +75,8 @@ def solve_poisson(
     ------
     InputError
         If an argument has the wrong shape or kind, a conductance is not positive and finite, an exponent is not in 1
-        to 2, or a vertex is not known; the message names the cell.
+        to 2, or a vertex is not known, and the message names the cell; or if the numbers are so large that their
+        products leave the range of float64.
     UnsolvableError
         If sources do not add up to zero in a component without a fixed potential; the message names its first
         vertices and the surplus. Decided by exact sums before anything is solved.
@@ -93,17 +102,37 @@ def solve_poisson(
     if not (isinstance(rtol, float | int | np.floating) and 0 < rtol < 1):
         message = f"rtol must be a number between 0 and 1, got {rtol!r}"
         raise InputError(message)
-    problem = posed(K, source, conductance, fixed, exponent, unbalanced)
-    solve = solve_linear if problem.is_linear else solve_power_law
-    outcome = solve(problem, float(rtol), method)
-    asked = {
-        "rtol": float(rtol), "method": method if isinstance(method, str) else method.name, "unbalanced": unbalanced,
-        "exponent": np.asarray(exponent, dtype=np.float64).item() if np.ndim(exponent) == 0 else "one an edge",
-    }  # fmt: skip
-    solution = _solution(problem, outcome, asked)
-    if not outcome.reached:
-        raise AccuracyError(_shortfall(problem, solution, outcome, float(rtol)), solution)
+    try:
+        with np.errstate(over="raise", invalid="raise"):
+            problem = posed(K, source, conductance, fixed, exponent, unbalanced)
+            solve = solve_linear if problem.is_linear else solve_power_law
+            outcome = solve(problem, float(rtol), method)
+            asked = {
+                "rtol": float(rtol), "method": method if isinstance(method, str) else method.name,
+                "unbalanced": unbalanced,
+                "exponent": np.asarray(exponent, dtype=np.float64).item() if np.ndim(exponent) == 0 else "one an edge",
+            }  # fmt: skip
+            solution = _solution(problem, outcome, asked)
+            if not outcome.reached:
+                raise AccuracyError(_shortfall(problem, solution, outcome, float(rtol)), solution)
+    except (FloatingPointError, OverflowError):
+        raise InputError(_beyond_range(K, source, conductance, fixed, exponent)) from None
     return solution
+
+
+def _beyond_range(K: Complex, source: Source, conductance: Conductance, fixed: Fixed, exponent: ArrayLike) -> str:
+    weights = given_conductances(K, conductance)[0]
+    sources = given_sources(K, source)[0]
+    with np.errstate(over="ignore", invalid="ignore"):
+        is_fixed, start = given_fixed(K, fixed, sources.shape[1], K.component_labels, K.n_components)
+    held = f", fixed potentials up to {np.abs(start[is_fixed]).max():.3g}" if is_fixed.any() else ""
+    power = given_exponents(K, exponent).max(initial=1.0)
+    return (
+        "float64 (up to 1.8e308) must hold flows, drops, and the energy, which is their product; got sources up to "
+        f"{np.abs(sources).max(initial=0.0):.3g}{held}, conductances from {weights.min(initial=np.inf):.3g} to "
+        f"{weights.max(initial=0.0):.3g}, an exponent of {power:.4g}; correct what is too large, or give it in a "
+        "larger unit"
+    )
 
 
 def _solution(problem: Posed, outcome: Outcome, asked: dict[str, Any]) -> Solution:

@@ -34,8 +34,9 @@ METHODS = {
     "elimination, two samples": Elimination(samples=2, seed=5),
     "gradients": DiagonalGradients(),
     "gamg": Petsc("gamg"),
+    "hypre": Petsc("hypre"),
 }
-OPTIONAL = {"cholmod": "sksparse", "gamg": "petsc4py"}
+OPTIONAL = {"cholmod": "sksparse", "gamg": "petsc4py", "hypre": "petsc4py"}
 ITERATIVE = ("ruge_stuben", "elimination", "gradients")
 
 
@@ -107,6 +108,15 @@ def test_nothing_that_was_given_is_changed(method):
     assert all(np.array_equal(one, other) for one, other in zip(before, after, strict=True))
 
 
+@pytest.mark.parametrize(("weight", "size"), [(1e-200, 1e-150), (1e200, 1e100)])
+def test_the_unit_of_conductances_and_sources_makes_no_difference(method, weight, size):
+    tail, head = square(12)
+    problem = graph(tail, head, 144, np.full(len(tail), weight))
+    b = size * right_side(graph(tail, head, 144))
+    answer = method.prepare(problem).solve(b)
+    assert np.abs(problem.matrix @ answer.x - b).max() <= 1e-7 * np.abs(b).max()
+
+
 def test_a_right_side_of_zero_gives_zero(method):
     problem = graph(*square(6), 36)
     answer = method.prepare(problem).solve(np.zeros(36))
@@ -171,7 +181,7 @@ def test_a_right_side_that_does_not_fit_is_refused(method, bad):
         prepared.solve(bad)
 
 
-@pytest.mark.parametrize(("name", "part"), [("cholmod", "sksparse"), ("gamg", "petsc4py")])
+@pytest.mark.parametrize(("name", "part"), [("cholmod", "sksparse"), ("gamg", "petsc4py"), ("hypre", "petsc4py")])
 def test_a_part_that_is_not_installed_is_named(monkeypatch, name, part):
     monkeypatch.setitem(sys.modules, part, None)
     with pytest.raises(InputError, match=r'pip install "dec\['):

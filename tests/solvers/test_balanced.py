@@ -88,16 +88,36 @@ def test_compiled_and_interpreted_kernels_give_the_same_bits():
     n, m = 200, 500
     ends = [np.concatenate([rng.integers(0, n, m), np.zeros(6000, np.int64)]) for _ in range(2)]
     flows = [np.concatenate([rng.normal(size=m) * 10 ** rng.uniform(-8, 8, m), np.zeros(6000)]) for _ in range(2)]
-    order, parent = np.arange(n), np.maximum(rng.integers(-1, np.arange(n)), -1)
-    parent[0] = -1
     results = []
     for how in (lambda kernel: kernel.interpreted, lambda kernel: balanced.compiled(kernel.interpreted)):
-        parts = [np.zeros(n) for _ in range(3)]
-        how(balanced._add_flows)(*ends, *flows, *parts)
-        how(balanced._add_to_parents)(order, parent, *parts)
-        results.append(np.concatenate(parts))
+        surplus, changed = np.zeros((n, 3)), [flow.copy() for flow in flows]
+        slack, carried = np.zeros(len(ends[0])), np.zeros(n)
+        how(balanced._add_flows)(*ends, *changed, surplus)
+        inside = how(balanced._forest_edges)(np.arange(len(ends[0])), *ends, np.arange(n))
+        order, parent, via = how(balanced._leaves_first)(*ends, np.flatnonzero(inside), n, 7)
+        how(balanced._carry)(order, parent, via, ends[0], surplus, *changed, slack, carried)
+        parts = (surplus, *changed, slack, carried, order, parent, via)
+        results.append(np.concatenate([part.ravel() for part in parts]))
     assert np.array_equal(*results)
-    assert results[0].any()
+    assert slack.any()
+    assert carried.any()
+
+
+@given(st.data())
+def test_the_forest_hangs_from_its_root_and_its_vertices_carry_after_those_below_them(data):
+    K = data.draw(multigraphs())
+    n = K.counts[0]
+    chosen = np.flatnonzero(balanced._forest_edges(np.arange(K.counts[1]), K.tail, K.head, np.arange(n)))
+    root = data.draw(st.integers(-1, n - 1))
+    order, parent, via = balanced._leaves_first(K.tail, K.head, chosen, n, root)
+    assert sorted(via[order]) == chosen.tolist()
+    assert len(chosen) == n - K.n_components
+    assert root < 0 or parent[root] == -1
+    turn = np.full(n, n)
+    turn[order] = np.arange(len(order))
+    for v in order:
+        assert turn[parent[v]] > turn[v]
+        assert {v, parent[v]} == {K.tail[via[v]], K.head[via[v]]}
 
 
 def test_a_network_without_loops_is_solved_by_adding_up():

@@ -8,6 +8,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from dec.calculus.complex import Complex, grid
+from dec.solvers import linear
 from dec.solvers.balanced import BalancedFlow, Carrier
 from dec.solvers.bounds import energy_between, linear_bound
 from dec.solvers.linear import solve_linear
@@ -190,3 +191,31 @@ def test_a_loose_solve_has_a_bound_near_its_loose_error():
     flow = solve_linear(problem, 1e-8, "auto").flow
     error = root(Fraction(float(((np.diff((loose - good)[np.stack([K.tail, K.head])], axis=0)) ** 2).sum())))
     assert linear_bound(problem, loose[:, None], flow)[0] == pytest.approx(error, rel=1e-6)
+
+
+@pytest.mark.parametrize("columns", [1, 2])
+def test_the_bound_of_many_edges_adds_up_over_blocks_of_them(columns):
+    K = grid((160, 160))  # 50,880 edges, two blocks
+    rng = np.random.default_rng(3)
+    c = 10 ** rng.uniform(-3, 3, K.counts[1])
+    source = rng.normal(size=(K.counts[0], columns))
+    problem = posed(K, source, c, {0: 0.0}, 1.0, "refuse")
+    flow = Carrier(problem, c).balance(rng.normal(size=(len(c), columns)), np.zeros((len(c), columns)))
+    u = rng.normal(size=source.shape)
+    u[0] = 0.0
+    drive = c[:, None] * (u[K.head] - u[K.tail])
+    plain = np.sqrt(((flow.value + drive) ** 2 / c[:, None]).sum(axis=0))
+    assert linear_bound(problem, u, flow) == pytest.approx(plain, rel=1e-9)
+    assert (linear_bound(problem, u, flow) >= plain * (1 - 1e-12)).all()
+
+
+def test_a_correction_changes_flow_and_measure_alike_over_blocks():
+    K = grid((160, 160))
+    rng = np.random.default_rng(4)
+    c = 10 ** rng.uniform(-3, 3, K.counts[1])
+    problem = posed(K, np.zeros(K.counts[0]), c, {0: 0.0}, 1.0, "refuse")
+    flow, change = rng.normal(size=(len(c), 2)), rng.normal(size=(K.counts[0], 2))
+    before, step = flow.copy(), change[K.head] - change[K.tail]
+    size = linear._move(problem, flow, change)
+    assert flow == pytest.approx(before - c[:, None] * step, rel=1e-12, abs=1e-12)
+    assert size == pytest.approx(np.sqrt((c[:, None] * step**2).sum(axis=0)), rel=1e-12)
