@@ -14,6 +14,10 @@ __all__ = [
     "checked_cells", "checked_degree", "checked_ids", "checked_points", "per_axis", "taken_once", "vertex_count",
 ]  # fmt: skip
 
+# a vertex costs some bytes in every array over vertices, used or not
+_MANY = 10_000_000
+_MANY_EACH = 500  # for each end of an edge or corner of a cell
+
 
 def checked_degree(degree: object, allowed: range, dim: int) -> int:
     """The degree as an int.
@@ -120,7 +124,8 @@ def vertex_count(
     Raises
     ------
     InputError
-        If the number given is no whole number or negative, or there is another number of points.
+        If the number given is no whole number or negative, there is another number of points, or a vertex number is
+        so far beyond the number of cells that it can only be a mistake or an id.
 
     Examples
     --------
@@ -138,10 +143,21 @@ def vertex_count(
         count = len(_listed(ids, "vertex"))
     else:
         count = max((int(u.max()) + 1 for u in used if u.size), default=0)
+        _refuse_sparse(count, *used)
     if points is not None and len(points) != count:
         message = f"points must have one row for each of {count} vertices, got {len(points)}"
         raise InputError(message)
     return count
+
+
+def _refuse_sparse(count: int, *used: IntArray) -> None:
+    corners = sum(u.size for u in used)
+    if count > _MANY and count > _MANY_EACH * corners:
+        message = (
+            f"vertex numbers must run from 0 without wide gaps, got {count - 1} among {corners} corners; number the "
+            "vertices anew, numpy.unique(..., return_inverse=True) does it, or give n_vertices or points"
+        )
+        raise InputError(message)
 
 
 def checked_ids(ids: Sequence[Any] | ObjectArray | None, count: int, what: str) -> ObjectArray | None:
@@ -163,6 +179,22 @@ def checked_ids(ids: Sequence[Any] | ObjectArray | None, count: int, what: str) 
     if len(names) != count:
         message = f"{what}_ids must hold {count} names, got {len(names)}"
         raise InputError(message)
+    if not _all_differ(names):
+        _refuse_repeated(names, what)
+    array = np.empty(len(names), dtype=object)
+    array[:] = names
+    frozen(array)
+    return array
+
+
+def _all_differ(names: list[Any]) -> bool:
+    try:
+        return len(set(names)) == len(names)
+    except TypeError:
+        return False
+
+
+def _refuse_repeated(names: list[Any], what: str) -> None:
     seen: dict[Any, int] = {}
     for index, name in enumerate(names):
         try:
@@ -173,10 +205,6 @@ def checked_ids(ids: Sequence[Any] | ObjectArray | None, count: int, what: str) 
         if before != index:
             message = f"{what} id {name!r} is used twice, at {before} and {index}; ids must differ"
             raise InputError(message)
-    array = np.empty(len(names), dtype=object)
-    array[:] = names
-    frozen(array)
-    return array
 
 
 def per_axis(value: ArrayLike, sizes: Sequence[int], name: str) -> tuple[float, ...]:

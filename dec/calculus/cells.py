@@ -195,6 +195,11 @@ class Cells:
         tuple of int, length dim + 1
             Counted over the rationals by union-find, duality and integer elimination, never by a threshold.
 
+        Raises
+        ------
+        TopologyError
+            If the cells are so entangled that the elimination would not end in reasonable time.
+
         Notes
         -----
         Source: Munkres, Elements of Algebraic Topology, 1984, sections 5, 22 and 65.

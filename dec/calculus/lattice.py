@@ -6,7 +6,7 @@ from typing import Any
 
 import numpy as np
 
-from dec.arrays import index_array
+from dec.arrays import IntArray, index_array
 from dec.calculus.arguments import per_axis
 from dec.errors import InputError
 from dec.topology.grids import grid_cells
@@ -47,7 +47,7 @@ def grid_parts(
         raise InputError(message)
     lattice = Lattice(
         sizes, per_axis(spacing, sizes, "spacing"), per_axis(origin, sizes, "origin"),
-        tuple(bool(closes) for closes in per_axis(np.asarray(periodic, dtype=int), sizes, "periodic")),
+        tuple(bool(closes) for closes in per_axis(_yes_or_no(periodic), sizes, "periodic")),
     )  # fmt: skip
     if min(lattice.spacing) <= 0:
         message = f"spacing must be positive, got {spacing}"
@@ -62,3 +62,12 @@ def grid_parts(
         "solids": None if cells.solid_corners is None else {"hexahedron": cells.solid_corners},
         "points": points, "lattice": lattice,
     }  # fmt: skip
+
+
+def _yes_or_no(periodic: object) -> IntArray:
+    array = np.asarray(periodic, dtype=object)
+    for value in array.ravel():
+        if not isinstance(value, bool | np.bool_) and not (isinstance(value, int | np.integer) and value in (0, 1)):
+            message = f"periodic must be True or False, or one of them for each axis, got {periodic!r:.60}"
+            raise InputError(message)
+    return array.astype(np.int64)

@@ -11,7 +11,7 @@ from dec.topology.graphs import components
 if TYPE_CHECKING:
     from dec.calculus.complex import Complex
 
-__all__ = ["check", "is_manifold"]
+__all__ = ["check", "is_manifold", "repeating_cells"]
 
 
 def check(complex: "Complex") -> list[Finding]:
@@ -24,8 +24,8 @@ def check(complex: "Complex") -> list[Finding]:
     if complex.dim < 2:
         return findings
     top, facets = ("face", "edges") if complex.dim == 2 else ("cell", "faces")
-    repeats = [numbers[_repeats(rows)] for numbers, rows in _top_corners(complex)]
     again = [numbers[_given_before(rows)] for numbers, rows in _top_facets(complex)]
+    repeats = [repeating_cells(complex)]
     findings += [_finding(f"no {top} repeats a corner", repeats), _finding(f"no {top} is given twice", again)]
     uses = complex.incidences.uses
     crowded = np.flatnonzero(uses > 2)
@@ -48,6 +48,17 @@ def check(complex: "Complex") -> list[Finding]:
     return findings
 
 
+def repeating_cells(complex: "Complex") -> IntArray:
+    """The faces of a surface, or the cells of a solid, that name a corner more than once; int64 array, ascending.
+
+    None in a grid, whose closed axes may be so short that corners coincide by right, and none in a graph.
+    """
+    if complex.dim < 2:
+        return np.empty(0, np.int64)
+    parts = [numbers[_repeats(rows)] for numbers, rows in _top_corners(complex)]
+    return np.sort(np.concatenate([np.empty(0, np.int64), *parts]))
+
+
 def is_manifold(complex: "Complex") -> bool:
     """Whether every used vertex has a neighbourhood like a line, disc or ball, or half of one at the boundary.
 
@@ -55,8 +66,9 @@ def is_manifold(complex: "Complex") -> bool:
     -----
     A graph: at most two edge ends at a vertex. A surface: one or two faces at an edge, one fan at a vertex. A solid:
     one or two cells at a face, one fan at an edge, and at a vertex a link of Euler characteristic 2, or 1 at the
-    boundary. Source: Munkres, Elements of Algebraic Topology, 1984, section 63 (links in manifolds). A grid is a
-    product of lines and circles, where no axis has shrunk to a point.
+    boundary. A cell that repeats a corner is no disc or ball, and its mesh no manifold. Source: Munkres, Elements of
+    Algebraic Topology, 1984, section 63 (links in manifolds). A grid is a product of lines and circles, where no axis
+    has shrunk to a point.
     """
     if _is_grid(complex):
         assert complex.lattice is not None
@@ -64,6 +76,8 @@ def is_manifold(complex: "Complex") -> bool:
     if complex.dim < 2:
         ends = np.concatenate([complex.tail, complex.head])
         return bool((np.bincount(ends, minlength=1) <= 2).all())
+    if len(repeating_cells(complex)):
+        return False
     uses = complex.incidences.uses
     if not ((uses >= 1) & (uses <= 2)).all() or len(_pinched_vertices(complex)):
         return False

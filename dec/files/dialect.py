@@ -140,19 +140,24 @@ def _not_utf8(source: Source, position: int) -> str:
 
 
 def _line_ends(name: str, text: bytes) -> bytes:
-    """Return the text with LF at each line end, the last one included."""
+    """Return the text with LF at each line end, the last one included; cells in quotation marks stay as they are."""
     if b"\r" in text:
-        text = text.replace(b"\r\n", b"\n")
-        if b"\n" not in text:
-            text = text.replace(b"\r", b"\n")
         data = np.frombuffer(text, dtype=np.uint8)
-        lone = _outside(np.flatnonzero(data == _CR), np.flatnonzero(data == _QUOTE))
-        if len(lone):
-            line = text.count(b"\n", 0, int(lone[0])) + 1
-            message = (
-                f"{name} line {line}: a carriage return stands inside the line; save the file with one kind of line end"
-            )
-            raise InputError(message)
+        returns = _outside(np.flatnonzero(data == _CR), np.flatnonzero(data == _QUOTE))
+        if b"\n" not in text:
+            data = data.copy()
+            data[returns] = _LF
+        else:
+            lone = returns[data[np.minimum(returns + 1, len(data) - 1)] != _LF]
+            if len(lone):
+                line = text.count(b"\n", 0, int(lone[0])) + 1
+                message = (
+                    f"{name} line {line}: a carriage return stands inside the line; save the file with one kind of "
+                    "line end"
+                )
+                raise InputError(message)
+            data = np.delete(data, returns)
+        text = data.tobytes()
     return text if text.endswith(b"\n") else text + b"\n"
 
 
@@ -224,6 +229,8 @@ def _has_outer_blanks(text: bytes, data: AnyArray, borders: IntArray, quotes: In
     """Return whether a blank touches the border of a cell; any blank that is not ASCII counts."""
     if not text.isascii():
         return True
+    if not len(quotes) and b" " not in text and b"\t" not in text:
+        return False
     around = np.concatenate([data[np.maximum(borders - 1, 0)], data[np.minimum(borders + 1, len(data) - 1)], data[:1]])
     inside = np.concatenate([data[quotes[0::2] + 1], data[quotes[1::2] - 1]])
     return bool(((around == _BLANK) | (around == _TAB)).any() or (inside <= _BLANK).any())

@@ -29,15 +29,12 @@ class MeshFormat:
         Kinds among "edges", "triangles", "quads", "polygons", "tetrahedra", "hexahedra".
     fields : frozenset of str
         Places among "vertices" and "cells" where it holds fields.
-    has_groups : bool
-        Whether it names groups of cells.
     """
 
     name: str
     read: Callable[[Source], MeshParts]
     cells: frozenset[str]
     fields: frozenset[str] = frozenset()
-    has_groups: bool = False
 
 
 _FACES = frozenset({"triangles", "quads", "polygons"})
@@ -46,13 +43,13 @@ _EDGES = frozenset({"edges"})
 _BOTH = frozenset({"vertices", "cells"})
 
 MESH_FORMATS: Mapping[str, MeshFormat] = {
-    ".stl": MeshFormat("STL", read_stl, frozenset({"triangles"}), has_groups=True),
-    ".obj": MeshFormat("OBJ", read_obj, _FACES | _EDGES, has_groups=True),
+    ".stl": MeshFormat("STL", read_stl, frozenset({"triangles"})),
+    ".obj": MeshFormat("OBJ", read_obj, _FACES | _EDGES),
     ".off": MeshFormat("OFF", read_off, _FACES),
     ".ply": MeshFormat("PLY", read_ply, _FACES | _EDGES, _BOTH),
     ".vtu": MeshFormat("VTU", read_vtu, _FACES | _SOLIDS | _EDGES, _BOTH),
     ".vtk": MeshFormat("legacy VTK", read_vtk, _FACES | _SOLIDS | _EDGES, _BOTH),
-    ".msh": MeshFormat("MSH", read_msh, _SOLIDS | _EDGES | frozenset({"triangles", "quads"}), _BOTH, has_groups=True),
+    ".msh": MeshFormat("MSH", read_msh, _SOLIDS | _EDGES | frozenset({"triangles", "quads"}), _BOTH),
 }
 TABLE_SUFFIXES = (".csv", ".tsv", ".txt", ".parquet")
 WAYS_OUT: Mapping[str, str] = {

@@ -1,11 +1,13 @@
 """meshio behind a fence: it may print, warn, raise anything or end the process; out comes a mesh or one InputError."""
 
-import contextlib
-import io
+import sys
 import tempfile
+import threading
 import warnings
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any, TextIO
 
 import numpy as np
 
@@ -18,6 +20,8 @@ if TYPE_CHECKING:
     import meshio
 
 __all__ = ["fenced", "parts_of"]
+
+_ONE_AT_A_TIME = threading.Lock()
 
 
 def fenced(source: Source, module: str, way_out: str) -> tuple["meshio.Mesh", list[str]]:
@@ -42,29 +46,95 @@ def fenced(source: Source, module: str, way_out: str) -> tuple["meshio.Mesh", li
     InputError
         If the reader fails in any way, or stops at text it cannot read.
     """
-    said = io.StringIO()
-    with tempfile.TemporaryDirectory(prefix="dec-") as folder, warnings.catch_warnings(record=True) as caught:
-        warnings.simplefilter("always")
-        with contextlib.redirect_stdout(said), contextlib.redirect_stderr(said):
-            import meshio as reader  # inside, so that its first words are caught too
-
+    try:
+        with tempfile.TemporaryDirectory(prefix="dec-") as folder:
             path = Path(folder, f"mesh.{module}")
             path.write_bytes(source.data)
-            try:
-                mesh = getattr(reader, module).read(path)
-            except (Exception, SystemExit) as error:
-                reason = " ".join(printable(str(error)).split()) or type(error).__name__
-                message = f"{source.name} cannot be read as {module.upper()} ({reason[:200]}); {way_out}"
-                raise InputError(message) from None
-    notes = [" ".join(said.getvalue().split())] if said.getvalue().strip() else []
-    for warning in caught:
-        text = " ".join(str(warning.message).split())
+            mesh, said, warned = _read(source, module, path, way_out)
+    except OSError as error:
+        message = (
+            f"{source.name}: no room to hand it over in the temporary folder ({error.strerror or error}); free some "
+            "space there, or name another folder in TMPDIR"
+        )
+        raise InputError(message) from None
+    notes = [" ".join(said.split())] if said.strip() else []
+    for warning in warned:
+        text = " ".join(str(warning).split())
         if "unmatched data" in text:  # the reader went on with whatever it had
             message = f"{source.name}: the numbers break off at a word that is none; {way_out}"
             raise InputError(message)
-        if not issubclass(warning.category, DeprecationWarning | PendingDeprecationWarning | FutureWarning):
+        if not isinstance(warning, DeprecationWarning | PendingDeprecationWarning | FutureWarning):
             notes.append(text)
     return mesh, [f"the reader says: {note}" for note in notes]
+
+
+def _read(source: Source, module: str, path: Path, way_out: str) -> tuple["meshio.Mesh", str, list[Warning | str]]:
+    with _listening() as ear:
+        import meshio as reader  # inside, so that its first words are caught too
+
+        try:
+            mesh = getattr(reader, module).read(path)
+        except (Exception, SystemExit) as error:
+            reason = " ".join(printable(str(error)).split()) or type(error).__name__
+            message = f"{source.name} cannot be read as {module.upper()} ({reason[:200]}); {way_out}"
+            raise InputError(message) from None
+    return mesh, "".join(ear.said), ear.warned
+
+
+class _Ear:
+    """Keeps what one thread prints and warns; what the others do goes on to where it went before."""
+
+    def __init__(self) -> None:
+        self.thread: int | None = threading.get_ident()
+        self.said: list[str] = []
+        self.warned: list[Warning | str] = []
+        self.shown_before = warnings.showwarning
+
+    def hears(self) -> bool:
+        return threading.get_ident() == self.thread
+
+    def show(self, message: Warning | str, category: type[Warning], *place: Any, **more: Any) -> None:
+        if self.hears():
+            self.warned.append(message)
+        else:
+            self.shown_before(message, category, *place, **more)
+
+
+class _Stream:
+    """Stands for standard output or error while an ear listens."""
+
+    def __init__(self, ear: _Ear, stream: TextIO) -> None:
+        self._ear, self._stream = ear, stream
+
+    def write(self, text: str) -> int:
+        if not self._ear.hears():
+            return self._stream.write(text)
+        self._ear.said.append(text)
+        return len(text)
+
+    def __getattr__(self, name: str) -> Any:
+        return getattr(self._stream, name)
+
+
+@contextmanager
+def _listening() -> Iterator[_Ear]:
+    # the streams and the warning filters belong to the whole process: one fence at a time, and other threads keep
+    # theirs; a stream that another thread took over meanwhile is left to it, and passes everything on
+    with _ONE_AT_A_TIME, warnings.catch_warnings():
+        ear = _Ear()
+        warnings.filterwarnings("always", module=r"meshio\b")
+        warnings.showwarning = ear.show
+        streams = {name: _Stream(ear, getattr(sys, name)) for name in ("stdout", "stderr")}
+        before = {name: getattr(sys, name) for name in streams}
+        for name, stream in streams.items():
+            setattr(sys, name, stream)
+        try:
+            yield ear
+        finally:
+            ear.thread = None
+            for name, stream in streams.items():
+                if getattr(sys, name) is stream:
+                    setattr(sys, name, before[name])
 
 
 def parts_of(source: Source, mesh: "meshio.Mesh", notes: list[str], way_out: str) -> MeshParts:

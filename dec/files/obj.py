@@ -13,13 +13,22 @@ __all__ = ["read_obj"]
 
 _FREE_FORM = (b"curv", b"curv2", b"surf")
 _LINE = 3
+_READ = (b"v", b"f", b"l", b"g", b"o")
+# what only says how a mesh looks, or carries what the docstring says is not read
+_SILENT = (
+    b"vt", b"vn", b"s", b"mg", b"usemtl", b"mtllib", b"usemap", b"maplib", b"bevel", b"c_interp", b"d_interp", b"lod",
+    b"shadow_obj", b"trace_obj", b"ctech", b"stech",
+)  # fmt: skip
+_POINT_WORDS = 5  # v x y z w
+_SAID = 8
 
 
 def read_obj(source: Source) -> MeshParts:
     """The points, faces, lines and groups of an OBJ file.
 
-    Texture and normal indices, materials and vertex colours are not read. Faces keep their size and order; a
-    polyline of k points is k - 1 edges. Each ``g`` and ``o`` name is a group of the faces that follow it.
+    Texture and normal indices and materials are not read; vertex colours and statements that are not known are not
+    read either, and noted. Faces keep their size and order; a polyline of k points is k - 1 edges. Each ``g`` and
+    ``o`` name is a group of the faces that follow it.
 
     Parameters
     ----------
@@ -32,8 +41,8 @@ def read_obj(source: Source) -> MeshParts:
     Raises
     ------
     InputError
-        If a line cannot be read, a face has fewer than three corners or names a point that is not there, or the
-        file holds free-form surfaces; the message gives the line.
+        If a line cannot be read, a face has fewer than three corners or names a point that is not there, a statement
+        is written in capitals, or the file holds free-form surfaces; the message gives the line.
 
     Notes
     -----
@@ -41,6 +50,7 @@ def read_obj(source: Source) -> MeshParts:
     """
     lines = TextLines.of(source.name, source.data, comment=b"#").joined(b"\\")
     _refuse_free_form(lines)
+    notes = _unread(lines)
     is_point = lines.starting_with(b"v")
     points = _without_keyword(lines, is_point).only(is_point).table(3, "a point")
     faces, face_lines = _corners(lines, b"f", is_point, 3)
@@ -49,7 +59,7 @@ def read_obj(source: Source) -> MeshParts:
     nodes = faces if not len(segments) else _joined(faces, segments)
     kinds = np.concatenate([np.full(len(faces), POLYGON), np.full(len(segments), _LINE)])
     groups = _groups(lines, face_lines) if len(faces) else ()
-    return MeshParts(points, kinds, nodes, groups=groups)
+    return MeshParts(points, kinds, nodes, groups=groups, notes=notes)
 
 
 def _refuse_free_form(lines: TextLines) -> None:
@@ -59,6 +69,41 @@ def _refuse_free_form(lines: TextLines) -> None:
             line = int(np.argmax(found))
             message = f"{lines.place(line)}: free-form geometry ({keyword.decode()}) is no mesh; export polygons"
             raise InputError(message)
+
+
+def _unread(lines: TextLines) -> tuple[str, ...]:
+    """Return what is said about lines that are not read; refuse those whose keyword is known but for its capitals."""
+    left = lines.words > 0
+    for keyword in (*_READ, *_SILENT):
+        left &= ~lines.starting_with(keyword)
+        if not left.any():
+            break
+    said: list[str] = []
+    while left.any() and len(said) < _SAID:
+        line = int(np.argmax(left))
+        word = lines.data[lines.word_starts[lines.word_offsets[line]] : lines.ends[line]].tobytes().split(None, 1)[0]
+        if word.lower() in _READ:
+            message = (
+                f"{lines.place(line)}: a statement must be written in small letters, found "
+                f"{printable(lines.text(line))!r}; write {word.lower().decode()}"
+            )
+            raise InputError(message)
+        alike = left & lines.starting_with(word)
+        shown = printable(word.decode("utf-8", "replace"))[:40]
+        said.append(f"{_lines(alike)} with {shown} not read (first: line {lines.number(line)})")
+        left &= ~alike
+    if left.any():
+        said.append(f"{_lines(left)} with other words not read (first: line {lines.number(int(np.argmax(left)))})")
+    coloured = lines.starting_with(b"v") & (lines.words > _POINT_WORDS)
+    if coloured.any():
+        first = lines.number(int(np.argmax(coloured)))
+        said.append(f"{_lines(coloured)} with the colour of a point, colour not read (first: line {first})")
+    return tuple(said)
+
+
+def _lines(chosen: BoolArray) -> str:
+    count = int(chosen.sum())
+    return f"{count} line{'' if count == 1 else 's'}"
 
 
 def _without_keyword(lines: TextLines, chosen: BoolArray) -> TextLines:

@@ -10,7 +10,7 @@ from dec.arrays import AnyArray, FloatArray, IntArray
 from dec.errors import InputError
 from dec.files.parts import POLYGON, MeshParts, field_array
 from dec.files.ply_records import Column, Element, Property, binary_records, text_records
-from dec.files.sources import Source, printable
+from dec.files.sources import Source, printable, whole_count
 from dec.topology.polygons import Ragged
 
 __all__ = ["read_ply"]
@@ -41,7 +41,8 @@ def read_ply(source: Source) -> MeshParts:
     Raises
     ------
     InputError
-        If the header cannot be read, the data end early, or a face names a point that is not there.
+        If the header cannot be read or names an element or property twice, the data end early, or a face or edge
+        names a point that is not there.
 
     Notes
     -----
@@ -49,14 +50,16 @@ def read_ply(source: Source) -> MeshParts:
     """
     form, elements, body, first_line = _header(source)
     if form == "ascii":
-        tables = text_records(source, body, first_line, elements)
+        tables, left_over = text_records(source, body, first_line, elements)
     else:
-        tables = binary_records(source, body, elements, _ORDERS[form])
+        tables, left_over = binary_records(source, body, elements, _ORDERS[form])
     known = {element.name for element in elements}
     if "tristrips" in known:
         message = f"{source.name}: triangle strips are not read; export triangles"
         raise InputError(message)
     notes = [f"element {name} was not read" for name in sorted(known - {"vertex", "face", "edge"})]
+    if left_over:
+        notes.append(f"{left_over} after the last promised record not read; the header may promise too few")
     points, point_data = _points(source, tables.get("vertex", {}), notes)
     cells, kind, cell_data = _cells(source, tables, len(points), notes)
     return MeshParts(points, np.full(len(cells), kind), cells, point_data, cell_data, notes=tuple(notes))
@@ -69,7 +72,8 @@ def _header(source: Source) -> tuple[str, list[Element], int, int]:
     if not source.data.startswith(b"ply") or end < 0 or stop < 0:
         message = f"{source.name} must begin with the line ply and have a line end_header; it does not"
         raise InputError(message)
-    form, elements = "", []
+    form = ""
+    elements: list[Element] = []
     for number, line in enumerate(source.data[:end].decode("utf-8", "replace").split("\n"), start=1):
         words = printable(line.strip()).split()
         place = f"{source.name} line {number}"
@@ -78,9 +82,12 @@ def _header(source: Source) -> tuple[str, list[Element], int, int]:
         if words[0] == "format" and len(words) == 3 and words[1] in _ORDERS:
             form = words[1]
         elif words[0] == "element" and len(words) == 3 and words[2].isdecimal():
-            elements.append(Element(words[1], int(words[2]), []))
+            _refuse_again(words[1], [element.name for element in elements], "element", place)
+            elements.append(Element(words[1], whole_count(words[2], place), []))
         elif words[0] == "property" and elements:
-            elements[-1].properties.append(_property(words[1:], place))
+            found = _property(words[1:], place)
+            _refuse_again(found.name, [each.name for each in elements[-1].properties], "property", place)
+            elements[-1].properties.append(found)
         else:
             message = f"{place}: a format, element or property must stand here, found {line.strip()[:60]!r}"
             raise InputError(message)
@@ -88,6 +95,12 @@ def _header(source: Source) -> tuple[str, list[Element], int, int]:
         message = f"{source.name}: the header must give the format as one of {', '.join(_ORDERS)}"
         raise InputError(message)
     return form, elements, stop + 1, source.data.count(b"\n", 0, stop + 1) + 1
+
+
+def _refuse_again(name: str, known: list[str], what: str, place: str) -> None:
+    if name in known:
+        message = f"{place}: {what} {name} stands there a second time; rename one of the two"
+        raise InputError(message)
 
 
 def _property(words: list[str], place: str) -> Property:
@@ -133,13 +146,14 @@ def _cells(
     if name and len(faces[name]):
         corners = faces[name]
         assert isinstance(corners, Ragged)
+        _refuse_fractions(source, corners.flat, name)
         if "vertex1" in edges:
             notes.append(f"{len(edges['vertex1'])} edges of the file were not read; the faces make the complex")
         _refuse_outside(source, corners, n_points, "face")
         _refuse_short(source, corners)
         return corners, POLYGON, _scalars(faces, [name], "faces", notes)
     if "vertex1" in edges and "vertex2" in edges:
-        ends = np.stack([_as_index(edges["vertex1"]), _as_index(edges["vertex2"])], axis=1)
+        ends = np.stack([_as_index(source, edges[end], end) for end in ("vertex1", "vertex2")], axis=1)
         pairs = Ragged(ends.ravel(), np.arange(len(ends) + 1) * 2, 2)
         _refuse_outside(source, pairs, n_points, "edge")
         return pairs, _LINE, _scalars(edges, ["vertex1", "vertex2"], "edges", notes)
@@ -149,9 +163,18 @@ def _cells(
     raise InputError(message)
 
 
-def _as_index(values: Column) -> IntArray:
-    array: AnyArray = np.asarray(values)
-    return array.astype(np.int64)
+def _as_index(source: Source, values: Column, name: str) -> IntArray:
+    if isinstance(values, Ragged):
+        message = f"{source.name}: {name} must be one number for each edge, the header makes it a list"
+        raise InputError(message)
+    _refuse_fractions(source, values, name)
+    return values.astype(np.int64)
+
+
+def _refuse_fractions(source: Source, values: AnyArray, name: str) -> None:
+    if values.dtype.kind not in "iu":
+        message = f"{source.name}: {name} must be of a type of whole numbers, such as int; found {values.dtype}"
+        raise InputError(message)
 
 
 def _refuse_short(source: Source, corners: Ragged) -> None:

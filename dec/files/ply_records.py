@@ -36,8 +36,14 @@ class Element:
 
 def text_records(
     source: Source, body: int, first_line: int, elements: list[Element]
-) -> dict[str, dict[str, Column]]:  # fmt: skip
+) -> tuple[dict[str, dict[str, Column]], str]:  # fmt: skip
     """The columns of each element of a text file, one record a line.
+
+    Returns
+    -------
+    tables : dict of element name to dict of property name to Column
+    left_over : str
+        How many lines follow the last record, in words; empty for none.
 
     Raises
     ------
@@ -54,7 +60,8 @@ def text_records(
         numbers, offsets = lines.only(rows).numbers()
         tables[element.name] = _text_columns(lines, rows, element, numbers, offsets)
         start += element.count
-    return tables
+    more = len(filled) - start
+    return tables, f"{more} line{'' if more == 1 else 's'}" if more > 0 else ""
 
 
 def _text_columns(
@@ -116,7 +123,9 @@ def _refuse_early_end(source: Source, element: Element, found: int) -> None:
     raise InputError(message)
 
 
-def binary_records(source: Source, body: int, elements: list[Element], order: str) -> dict[str, dict[str, Column]]:
+def binary_records(
+    source: Source, body: int, elements: list[Element], order: str
+) -> tuple[dict[str, dict[str, Column]], str]:  # fmt: skip
     """The columns of each element of a binary file.
 
     Parameters
@@ -128,6 +137,12 @@ def binary_records(source: Source, body: int, elements: list[Element], order: st
     order : "<" or ">"
         Byte order.
 
+    Returns
+    -------
+    tables : dict of element name to dict of property name to Column
+    left_over : str
+        How many bytes follow the last record, in words; empty for none but blanks and line ends.
+
     Raises
     ------
     InputError
@@ -138,7 +153,8 @@ def binary_records(source: Source, body: int, elements: list[Element], order: st
     for element in elements:
         starts, body = _record_starts(source, element, body, order)
         tables[element.name] = _binary_columns(data, element, starts, order)
-    return tables
+    more = len(source.data) - body
+    return tables, f"{more} byte{'' if more == 1 else 's'}" if source.data[body:].strip() else ""
 
 
 def _record_starts(source: Source, element: Element, body: int, order: str) -> tuple[IntArray, int]:

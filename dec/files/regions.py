@@ -16,7 +16,8 @@ _NAMES = ("vertices", "edges", "faces", "solid cells")
 def regions_of(complex_: Complex, parts: MeshParts, order: IntArray, source: str) -> dict[str, Region]:
     """Regions by name.
 
-    A name that stands for groups of several dimensions in the file gets the dimension added: ``wall (edges)``.
+    A name that stands for groups of several dimensions in the file gets the dimension added: ``wall (edges)``; groups
+    of one name and dimension are one region.
 
     Parameters
     ----------
@@ -34,21 +35,31 @@ def regions_of(complex_: Complex, parts: MeshParts, order: IntArray, source: str
     Raises
     ------
     InputError
-        If a group holds cells that are no cells of the complex: it cannot be carried, and is not dropped.
+        If a group holds cells that are no cells of the complex: it cannot be carried, and is not dropped. If a name
+        with its dimension added is the name of another group.
     """
     place = np.full(len(parts.kinds), -1, dtype=np.int64)
     place[order] = np.arange(len(order))
-    names = [group.name for group in parts.groups]
-    regions = {}
+    dimensions: dict[str, set[int]] = {}
     for group in parts.groups:
-        name = group.name if names.count(group.name) == 1 else f"{group.name} ({_NAMES[group.dimension]})"
+        dimensions.setdefault(group.name, set()).add(group.dimension)
+    members: dict[tuple[str, int], list[IntArray]] = {}
+    for group in parts.groups:
+        name = group.name if len(dimensions[group.name]) == 1 else f"{group.name} ({_NAMES[group.dimension]})"
         if group.dimension == complex_.dim:
             cells = place[group.cells]
         elif group.dimension == 0:
             cells = parts.nodes.flat[parts.nodes.offsets[group.cells]]
         else:
             cells = _coinciding(complex_, parts, group, source)
-        regions[name] = Region(name, group.dimension, np.unique(cells))
+        members.setdefault((name, group.dimension), []).append(cells)
+    regions: dict[str, Region] = {}
+    for (name, dimension), parts_of_it in members.items():
+        if name in regions:
+            what = _NAMES[regions[name].degree]
+            message = f"{source}: the name {name!r} stands for {what} and for {_NAMES[dimension]}; rename one group"
+            raise InputError(message)
+        regions[name] = Region(name, dimension, np.unique(np.concatenate(parts_of_it)))
     return regions
 
 

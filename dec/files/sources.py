@@ -10,8 +10,9 @@ from pathlib import Path
 from dec.calculus.dataset import Input
 from dec.errors import InputError
 
-__all__ = ["Source", "printable", "read_source"]
+__all__ = ["Source", "printable", "read_source", "whole_count"]
 
+_DIGITS = 18  # below 2**63
 _KINDS = (
     (stat.S_ISDIR, "a folder"),
     (stat.S_ISFIFO, "a pipe"),
@@ -60,7 +61,8 @@ def read_source(path: str | os.PathLike[str]) -> Source:
     Raises
     ------
     InputError
-        If the file is missing, is not an ordinary file, cannot be read, or is empty.
+        If the file is missing, is not an ordinary file, cannot be read, or is empty; standard input, if it is closed
+        or cannot be read.
     """
     if path == "-":
         return _not_empty(Source("stdin", _standard_input()))
@@ -87,6 +89,32 @@ def printable(text: str) -> str:
     return "".join(c if c.isprintable() else c.encode("unicode_escape").decode("ascii") for c in text)
 
 
+def whole_count(digits: str, place: str) -> int:
+    """The number that decimal digits write.
+
+    Parameters
+    ----------
+    digits : str
+        As ``str.isdecimal`` accepts.
+    place : str
+        Where they stand, for the message.
+
+    Raises
+    ------
+    InputError
+        If it has more than 18 digits, as no count of anything in a file has.
+
+    Examples
+    --------
+    >>> whole_count("12", "part.ply line 3")
+    12
+    """
+    if len(digits) > _DIGITS:
+        message = f"{place}: a number of {len(digits)} digits ({digits[:12]}...) is no count; the file may be damaged"
+        raise InputError(message)
+    return int(digits)
+
+
 def _read_bytes(path: str | os.PathLike[str], name: str) -> bytes:
     _refuse_other_than_file(os.stat(path).st_mode, name)  # noqa: PTH116 - opening a pipe would already wake its writer
     # looked at again once open, and never waiting: the name may mean something else by now
@@ -105,10 +133,18 @@ def _refuse_other_than_file(mode: int, name: str) -> None:
 
 
 def _standard_input() -> bytes:
-    if sys.stdin is None:
+    if sys.stdin is None or getattr(sys.stdin, "closed", False):
         message = "stdin is closed; give a file"
         raise InputError(message)
-    return sys.stdin.buffer.read()
+    try:
+        return sys.stdin.buffer.read()
+    except MemoryError:
+        message = "stdin does not fit into memory; give less of it"
+        raise InputError(message) from None
+    except (OSError, ValueError, AttributeError) as error:  # opened for writing only, or replaced by something else
+        reason = getattr(error, "strerror", None) or error
+        message = f"stdin cannot be read ({reason}); give a file, or pipe a table to -"
+        raise InputError(message) from None
 
 
 def _not_empty(source: Source) -> Source:

@@ -13,6 +13,7 @@ import numpy as np
 from dec.arrays import AnyArray
 from dec.errors import InputError
 from dec.files.lines import parsed_numbers
+from dec.files.sources import whole_count
 
 __all__ = ["TYPES", "ArrayReader"]
 
@@ -93,18 +94,23 @@ class ArrayReader:
         if kind not in TYPES:
             message = f"{self.name}: {what} is of type {kind or 'unknown'}, it must be one of {', '.join(TYPES)}"
             raise InputError(message)
+        components = self._components(element, what)
         if form == "ascii":
             values = self._from_text(element.text or "", TYPES[kind], what)
         else:
-            values = self._from_bytes(self._payload(element, form, what), TYPES[kind], what)
-        return self._shaped(values, element, what, rows)
+            room = rows * components * np.dtype(TYPES[kind]).itemsize
+            values = self._from_bytes(self._payload(element, form, what, room), TYPES[kind], what)
+        return self._shaped(values, components, what, rows)
 
-    def _shaped(self, values: AnyArray, element: Element, what: str, rows: int) -> AnyArray:
+    def _components(self, element: Element, what: str) -> int:
         text = element.get("NumberOfComponents") or "1"
-        components = int(text) if text.isdecimal() else 0
+        components = whole_count(text, f"{self.name}: components of {what}") if text.isdecimal() else 0
         if components < 1:
             message = f"{self.name}: {what} has {text} components; a number from 1 must stand there"
             raise InputError(message)
+        return components
+
+    def _shaped(self, values: AnyArray, components: int, what: str, rows: int) -> AnyArray:
         if len(values) != rows * components:
             message = (
                 f"{self.name}: {what} promises {rows} rows of {components}, found {len(values)} numbers; "
@@ -131,27 +137,32 @@ class ArrayReader:
         if len(data) % size:
             message = f"{self.name}: {what} has {len(data)} bytes, no multiple of {size}; the copy may be incomplete"
             raise InputError(message)
-        return np.frombuffer(data, dtype=self.order + kind).astype(kind)
+        return np.frombuffer(data, dtype=self.order + kind).astype(kind, copy=False)
 
-    def _payload(self, element: Element, form: str, what: str) -> bytes:
+    def _payload(self, element: Element, form: str, what: str, room: int) -> bytes:
         if form == "binary":
-            return self._decoded(_Base64("".join((element.text or "").split()).encode("ascii", "replace"), 0), what)
+            coded = "".join((element.text or "").split()).encode("ascii", "replace")
+            return self._decoded(_Base64(coded, 0), what, room)
         if form != "appended":
             message = f"{self.name}: {what} has format {form!r}, it must be ascii, binary or appended"
             raise InputError(message)
         text = element.get("offset", "").strip()
-        if not text.isdecimal() or int(text) > len(self.appended):
+        start = whole_count(text, f"{self.name}: offset of {what}") if text.isdecimal() else None
+        if start is None or start > len(self.appended):
             message = (
                 f"{self.name}: {what} starts at {text or 'no'} of {len(self.appended)} appended bytes; "
                 "the copy may be incomplete"
             )
             raise InputError(message)
-        return self._decoded((_Raw if self.is_raw else _Base64)(self.appended, int(text)), what)
+        return self._decoded((_Raw if self.is_raw else _Base64)(self.appended, start), what, room)
 
-    def _decoded(self, stream: "_Raw | _Base64", what: str) -> bytes:
+    def _decoded(self, stream: "_Raw | _Base64", what: str, room: int) -> bytes:
         try:
-            return self._uncompressed(stream, what) if self.compressor else self._plain(stream, what)
-        except (binascii.Error, zlib.error, lzma.LZMAError, EOFError, ValueError) as error:
+            return self._uncompressed(stream, what, room) if self.compressor else self._plain(stream, what)
+        except MemoryError:
+            message = f"{self.name}: {what} does not fit into memory; save fewer cells or fields in one file"
+            raise InputError(message) from None
+        except (binascii.Error, zlib.error, lzma.LZMAError, EOFError, ValueError, OverflowError) as error:
             if isinstance(error, InputError):
                 raise
             message = f"{self.name}: {what} cannot be decoded ({error}); the copy may be incomplete"
@@ -165,7 +176,7 @@ class ArrayReader:
             self._refuse_short(what, promised, len(data))
         return data
 
-    def _uncompressed(self, stream: "_Raw | _Base64", what: str) -> bytes:
+    def _uncompressed(self, stream: "_Raw | _Base64", what: str, room: int) -> bytes:
         size = np.dtype(self.header).itemsize
         n_blocks = int(self._numbers(stream.peek(size), what, 1)[0])
         if not n_blocks:
@@ -174,6 +185,12 @@ class ArrayReader:
             self._refuse_short(what, n_blocks, len(stream.data))
         head = self._numbers(stream.peek(size * (3 + n_blocks)), what, 3 + n_blocks)
         lengths = [int(head[1])] * (n_blocks - 1) + [int(head[2]) or int(head[1])]
+        if sum(lengths) > room:  # known before a byte is unpacked, so that a small file cannot fill the memory
+            message = (
+                f"{self.name}: {what} has room for {room} bytes, its packed blocks promise {sum(lengths)}; "
+                "the file may be damaged"
+            )
+            raise InputError(message)
         packed = [int(n) for n in head[3:]]
         data = stream.after_own(size * (3 + n_blocks), sum(packed))
         if len(data) < sum(packed):

@@ -13,7 +13,7 @@ import numpy as np
 from dec.arrays import AnyArray, FloatArray, IntArray
 from dec.errors import InputError
 from dec.files.parts import KINDS, MeshParts, field_array
-from dec.files.sources import Source
+from dec.files.sources import Source, whole_count
 from dec.files.vtu_arrays import ArrayReader
 from dec.topology.polygons import Ragged
 
@@ -117,7 +117,7 @@ def _count(name: str, element: Element, attribute: str) -> int:
     if not text.isdecimal():
         message = f"{name}: {attribute} of a Piece must be a number, found {text!r}"
         raise InputError(message)
-    return int(text)
+    return whole_count(text, f"{name}: {attribute} of a Piece")
 
 
 def _cells(reader: ArrayReader, piece: Element, n_points: int, n_cells: int) -> tuple[IntArray, Ragged]:

@@ -5,6 +5,8 @@ from numpy.typing import ArrayLike
 
 from dec.arrays import FloatArray
 from dec.calculus.complex import Complex
+from dec.calculus.soundness import repeating_cells
+from dec.errors import InputError
 from dec.geometry.corners import FaceBlock, edge_vectors, embedded, face_blocks
 from dec.geometry.fields import across, field_values, integration_degree, mean_beside
 from dec.geometry.gradients import Gradients, cell_gradients
@@ -42,7 +44,8 @@ def rule_error(K: Complex, values: ArrayLike, *, at: str = "vertices", quantity:
     Raises
     ------
     InputError
-        As `integrate_field`.
+        As `integrate_field`, or if a face of a surface repeats a corner: what it encloses is not known, and so
+        neither is what the field does across it.
 
     Notes
     -----
@@ -52,7 +55,8 @@ def rule_error(K: Complex, values: ArrayLike, *, at: str = "vertices", quantity:
     their place stands h times the range of the first derivative over all cells that touch either end: that spans two
     or three times h, which is the margin of safety; there is no other factor. On surfaces in space, cells turned by
     more than 30 degrees from the edge are left out, since a crease says nothing about the field. Polygons count
-    their whole area with every side, in place of the diagonals of their fan. Values in cells: the range of what is
+    their whole area with every side, in place of the diagonals of their fan. At a vertex or facet where more than 512
+    cells meet, a bound from the extremes of each component stands for the range. Values in cells: the range of what is
     integrated over the cells that meet there and their neighbours, a quarter of it between cells, twice it beside a
     single cell, whose value is carried from its middle to its side, and once at an edge on the skin of a solid.
 
@@ -70,6 +74,7 @@ def rule_error(K: Complex, values: ArrayLike, *, at: str = "vertices", quantity:
     [0.166667, 0.166667, 0.333333, 0.333333, 0.333333, 0.333333, 0.166667, 0.166667]
     """
     degree = integration_degree(K, at, quantity)
+    _refuse_repeats(K)
     field = field_values(K, values, at)
     rounding = 4 * float(np.finfo(np.float32 if is_single_precision(field) else np.float64).eps)
     if at == "cells":
@@ -77,6 +82,20 @@ def rule_error(K: Complex, values: ArrayLike, *, at: str = "vertices", quantity:
     if degree == 1:
         return _along_edges(K, field, quantity, rounding)
     return _through_faces(K, field, rounding)
+
+
+def _refuse_repeats(K: Complex) -> None:
+    # a solid cell may be collapsed into one with fewer corners, as mesh makers do: its skin still closes
+    repeating = repeating_cells(K) if K.dim == 2 else np.empty(0, np.int64)
+    if len(repeating):
+        face = int(repeating[0])
+        assert K.faces is not None
+        others = f" (and {len(repeating) - 1} more)" if len(repeating) > 1 else ""
+        message = (
+            f"a face must name each corner once, face {face} (from 0) has the corners {K.faces.row(face).tolist()}"
+            f"{others}; take it out, or split it where it meets itself"
+        )
+        raise InputError(message)
 
 
 def is_single_precision(values: FloatArray) -> bool:

@@ -3,16 +3,22 @@
 import heapq
 from collections import defaultdict
 from math import gcd
+from typing import NoReturn
 
 import numpy as np
 from scipy.sparse import csr_array
 
 from dec.arrays import AnyArray, BoolArray
+from dec.errors import TopologyError
 from dec.topology.compiled import compiled
 from dec.topology.graphs import Forest
 from dec.topology.surfaces import Incidences, Sheets
 
 __all__ = ["exact_rank", "first_betti", "top_betti"]
+
+# entries that may be touched, and so many more for each entry given: sponges of 50,000 cells need 4 for each entry
+_STEPS = 20_000_000
+_STEPS_EACH = 20
 
 
 def top_betti(incidences: Incidences, found: Sheets) -> int:
@@ -27,6 +33,11 @@ def top_betti(incidences: Incidences, found: Sheets) -> int:
     -------
     int
         The last Betti number of the complex.
+
+    Raises
+    ------
+    TopologyError
+        As `exact_rank`.
 
     Notes
     -----
@@ -64,6 +75,11 @@ def first_betti(coboundary: csr_array, forest: Forest) -> int:
     int
         The first Betti number.
 
+    Raises
+    ------
+    TopologyError
+        As `exact_rank`.
+
     Notes
     -----
     Edge values whose sum round every face is zero, taken zero on the forest: a face with one edge not yet known to
@@ -92,6 +108,12 @@ def exact_rank(rows: list[dict[int, int]]) -> int:
     -------
     int
 
+    Raises
+    ------
+    TopologyError
+        If the elimination takes more than 20 million steps and 20 for each entry, a step being one entry of a row
+        that is combined with another: the rows fill up instead of staying sparse, and would take hours.
+
     Notes
     -----
     Always eliminates with a shortest row, by an entry of least size in it, so that meshes stay sparse. No division
@@ -109,7 +131,7 @@ def exact_rank(rows: list[dict[int, int]]) -> int:
             users[c].add(i)
     heap = [(len(row), i) for i, row in live.items()]
     heapq.heapify(heap)
-    rank = 0
+    rank, steps = 0, _STEPS + _STEPS_EACH * sum(size for size, _ in heap)
     while heap:
         size, i = heapq.heappop(heap)
         if i not in live or not size or len(live[i]) != size:  # an entry that has been overtaken
@@ -119,6 +141,9 @@ def exact_rank(rows: list[dict[int, int]]) -> int:
         for c in row:
             users[c].discard(i)
         pivot = min(row, key=lambda c: (abs(row[c]), len(users[c]), c))
+        steps -= sum(len(row) + len(live[j]) for j in users[pivot])
+        if steps < 0:
+            _refuse_entangled(live)
         for j in sorted(users[pivot]):
             reduced = _without(pivot, live[j], row)
             for c in row:
@@ -126,6 +151,17 @@ def exact_rank(rows: list[dict[int, int]]) -> int:
             live[j] = reduced
             heapq.heappush(heap, (len(reduced), j))
     return rank
+
+
+def _refuse_entangled(live: dict[int, dict[int, int]]) -> NoReturn:
+    equations = sum(map(bool, live.values()))
+    unknowns = len({column for row in live.values() for column in row})
+    message = (
+        f"the holes cannot be counted exactly in reasonable time: {equations:,} equations between {unknowns:,} cells "
+        "are left that all hang together, as in a heap of cells that share edges and corners at random; check the "
+        "corner numbers of the cells, or take a part of the mesh"
+    )
+    raise TopologyError(message)
 
 
 def _without(pivot: int, row: dict[int, int], by: dict[int, int]) -> dict[int, int]:

@@ -97,6 +97,21 @@ def test_places_are_those_of_the_finest_reading_and_large_integers_do_not_wrap()
     assert large.integers.tolist() == [92233720368547758070, 1]
 
 
+@given(st.lists(st.from_regex(r"[+-]?[0-9]{1,22}(\.[0-9]{0,22})?(e[+-]?[0-9]{1,2})?", fullmatch=True), max_size=5))
+def test_plain_and_other_numbers_side_by_side_are_read_as_one_by_one(texts: list[str]):
+    found = column(*texts, "").decimals()
+    assert exact(found) == [*map(Fraction, texts), 0]
+    assert (found.integers.dtype == np.int64) == all(abs(int(i)) < 2**62 for i in found.integers)
+    assert column(*texts, "").numbers().tolist()[:-1] == [float(text) for text in texts]
+
+
+@pytest.mark.parametrize("size", [2**61 - 1, 2**61, 2**62 - 1, 2**62, 2**63])
+def test_integers_are_of_64_bits_just_while_they_stay_below_2_to_the_62(size: int):
+    for cells in (column(str(size), "-1"), column(str(-size), "1e0")):
+        found = cells.decimals().integers
+        assert (abs(found.tolist()[0]), found.dtype == np.int64) == (size, size < 2**62)
+
+
 def test_numbers_that_came_as_numbers_stay_what_they_are():
     whole = Column("n", np.array([2**63 - 1, -(2**63)]))
     assert whole.decimals().integers.tolist() == [2**63 - 1, -(2**63)]

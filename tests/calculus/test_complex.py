@@ -285,3 +285,34 @@ def test_what_is_done_to_a_matrix_that_was_handed_out_does_not_reach_the_complex
     K.boundary(1).data = np.zeros(4, np.int8)
     assert K.coboundary(0).toarray().tolist() == [[-1, 1, 0], [0, -1, 1]]
     assert K.cochain(0, [5, 7, 4]).d().values.tolist() == [2, -3]
+
+
+@pytest.mark.parametrize("value", ["yes", "1", 0.5, 2, None, [True, "no"], np.array([1.0, 0.0])])
+def test_a_grid_closes_by_true_or_false_only(value):
+    with pytest.raises(InputError, match="periodic must be True or False, or one of them for each axis, got"):
+        grid((3, 3), periodic=value)
+
+
+@pytest.mark.parametrize("value", [True, np.True_, 1, [True, 1], np.array([True, True])])
+def test_a_grid_closes_by_any_kind_of_true(value):
+    assert grid((3, 3), periodic=value).lattice.periodic == (True, True)
+
+
+@pytest.mark.parametrize(
+    "make",
+    [
+        lambda: Complex.from_edges([0], [2**31]),
+        lambda: Complex.from_edges([10**7], [0]),
+        lambda: Complex.from_faces([[0, 1, 2**40]]),
+        lambda: Complex.from_cells({"tetra": [[0, 1, 2, 2**62]]}),
+    ],
+)
+def test_a_vertex_number_far_beyond_the_number_of_cells_is_refused_before_any_array_of_that_size(make):
+    words = r"vertex numbers must run from 0 without wide gaps, got \d+ among \d corners; .*n_vertices"
+    with pytest.raises(InputError, match=words):
+        make()
+
+
+def test_many_vertices_may_be_asked_for_and_ten_million_need_no_reason():
+    assert Complex.from_edges([0], [10**7 - 1]).counts == (10**7, 1)
+    assert Complex.from_edges([0], [10**7], 10**7 + 1).counts == (10**7 + 1, 1)

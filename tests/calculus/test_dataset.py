@@ -7,6 +7,8 @@ from decimal import Decimal
 import numpy as np
 import pandas as pd
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset, Field, Input
@@ -34,6 +36,16 @@ def test_vertices_come_in_the_order_of_the_node_table_or_else_of_first_mention()
     assert frames({"from": ["B", "A"], "to": ["A", "C"]}).complex.vertex_ids.tolist() == ["B", "A", "C"]
     net = frames({"from": ["B"], "to": ["A"]}, {"id": ["A", "B", "Z"]})
     assert net.complex.vertex_ids.tolist() == ["A", "B", "Z"]
+
+
+@given(st.lists(st.tuples(st.sampled_from("ABCDE"), st.sampled_from("ABCDE")), min_size=1, max_size=8), st.booleans())
+def test_ends_are_numbered_as_by_looking_each_up_in_a_list(pairs: list[tuple[str, str]], with_nodes: bool):
+    table = {"from": [a for a, _ in pairs], "to": [b for _, b in pairs]}
+    names = list("EXDCBA") if with_nodes else list(dict.fromkeys(name for pair in pairs for name in pair))
+    network = frames(table, {"id": names} if with_nodes else None).complex
+    assert network.vertex_ids.tolist() == names
+    assert network.tail.tolist() == [names.index(a) for a, _ in pairs]
+    assert network.head.tolist() == [names.index(b) for _, b in pairs]
 
 
 def test_self_loops_and_parallel_edges_stay():

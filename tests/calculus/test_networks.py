@@ -147,3 +147,41 @@ def test_a_triangle_that_walks_a_self_loop_and_an_edge_there_and_back_counts_the
     assert K.walks.signs.tolist() == [1, 1, -1]
     assert K.coboundary(1).toarray()[0, [loop, edge]].tolist() == [1, 0]
     assert K.betti() == (1, 0, 0)
+
+
+NONE_VERTEX = Complex.from_edges([0], [1], vertex_ids=[None, 0])
+NONE_EDGE = Complex.from_edges([0, 0], [1, 1], edge_ids=[0, None])
+
+
+@pytest.mark.parametrize(
+    ("make", "message"),
+    [
+        (lambda: from_networkx(nx.Graph), "graph must be a NetworkX graph, got type"),
+        (lambda: from_networkx(nx.path_graph(3), faces=5), 'faces must be "none", "triangles" or a list .* got 5'),
+        (lambda: from_networkx(nx.path_graph(3), faces=None), "got None"),
+        (lambda: from_networkx(nx.path_graph(3), faces=[5]), "face 0 must be a list of nodes, got 5"),
+        (lambda: from_networkx(nx.path_graph(3), faces=[[0, 1, 2], [0, [1], 2]]), r"face 1 .* got \[0, \[1\], 2\]"),
+        (lambda: from_networkx(nx.path_graph(3), faces=["012"]), "face 0 must be a list of nodes, got '012'"),
+        (lambda: to_networkx(5), "complex must be a Complex, got int"),
+        (lambda: to_networkx(NONE_VERTEX), "vertex 0 must have an id other than None"),
+        (lambda: to_networkx(NONE_EDGE), "edge 1 must have an id other than None"),
+    ],
+)
+def test_what_is_no_graph_no_faces_or_no_complex_is_one_input_error(make, message):
+    with pytest.raises(InputError, match=message):
+        make()
+
+
+@pytest.mark.parametrize(
+    "ids",
+    [
+        [("a", "b", 1), 1],  # shortened, the first would have the key of the second
+        [1, ("a", "b", 1)],
+        [("a", "b", 1), 1, ("a", "b", ("a", "b", 1))],
+        [("a", "b", None), 0],
+    ],
+)
+def test_edges_whose_keys_would_clash_all_survive(ids):
+    n = len(ids)
+    graph = to_networkx(Complex.from_edges([0] * n, [1] * n, vertex_ids=["a", "b"], edge_ids=ids))
+    assert set(graph.edges(keys=True)) == {("a", "b", name) for name in ids}

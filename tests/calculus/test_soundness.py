@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 
 from dec.calculus.complex import Complex, grid
+from dec.calculus.soundness import repeating_cells
 
 MOEBIUS = [[0, 1, 2], [1, 2, 3], [2, 3, 4], [3, 4, 0], [4, 0, 1]]
 
@@ -179,3 +180,21 @@ def test_the_cone_over_a_torus_is_no_manifold_though_every_face_and_edge_is_in_o
 
 def test_orientability_is_not_answered_where_three_faces_meet():
     assert Complex.from_faces([[0, 1, 2], [0, 1, 3], [1, 0, 4]]).is_orientable is None
+
+
+@pytest.mark.parametrize("face", [[0, 1, 1, 2], [0, 1, 2, 1], [0, 1, 2, 0, 3, 4], [0, 1, 1]])
+def test_a_face_that_repeats_a_corner_is_a_finding_and_makes_no_manifold(face):
+    K = Complex.from_faces([face])
+    assert failed(K)["no face repeats a corner"].where == (0,)
+    assert not K.is_manifold
+    assert repeating_cells(Complex.from_faces([[5, 6, 7], face])).tolist() == [1]
+
+
+def test_a_solid_cell_that_repeats_a_corner_makes_no_manifold_and_a_short_closed_grid_is_one_all_the_same():
+    K = Complex.from_cells({"tetra": [[4, 5, 5, 6], [0, 1, 2, 3]], "hexahedron": [[0, 1, 2, 3, 4, 5, 6, 6]]})
+    assert repeating_cells(K).tolist() == [0, 2]
+    assert not K.is_manifold
+    short = grid((2, 2), periodic=True)
+    assert repeating_cells(short).tolist() == []
+    assert short.is_manifold
+    assert repeating_cells(Complex.from_edges([0, 0], [0, 1])).tolist() == []

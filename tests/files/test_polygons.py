@@ -231,3 +231,81 @@ def test_the_moebius_strip_and_the_torus_are_what_their_table_says():
     assert (strip.counts, torus.counts) == ((150, 270, 120), (288, 864, 576))
     assert (strip.is_orientable, torus.is_orientable) == (False, True)
     assert (len(strip.boundary_loops()), len(torus.boundary_loops())) == (1, 0)
+
+
+SQUARE = b"v 0 0 0\nv 1 0 0\nv 0 1 0\nf 1 2 3\n"
+
+
+@pytest.mark.parametrize(
+    ("lines", "notes"),
+    [
+        (b"vt 0 0\nvn 0 0 1\ns off\nusemtl red\nmtllib a.mtl\nbevel on\n", ()),
+        (b"fo 1 2 3\n\nfo 1 2 3\n", ("2 lines with fo not read (first: line 5)",)),
+        (
+            b"p 1\n# p 1\nhello\n",
+            ("1 line with p not read (first: line 5)", "1 line with hello not read (first: line 7)"),
+        ),
+        (b"v 1 1 1 1\nv 2 1 1 .5 .5 .5\n", ("1 line with the colour of a point, colour not read (first: line 6)",)),
+        (b"\xff\x1b[2J 1\n", ("1 line with \ufffd\\x1b[2J not read (first: line 5)",)),
+    ],
+)
+def test_obj_statements_that_are_not_read_are_told_unless_they_only_say_how_it_looks(lines: bytes, notes):
+    assert read_obj(Source("t.obj", SQUARE + lines)).notes == notes
+
+
+def test_many_unknown_obj_words_are_told_in_few_notes():
+    lines = "".join(f"word{k} 1\n" for k in range(3000)).encode()
+    notes = read_obj(Source("t.obj", SQUARE + lines)).notes
+    assert len(notes) == 9
+    assert notes[-1] == "2992 lines with other words not read (first: line 13)"
+
+
+@pytest.mark.parametrize("line", [b"F 1 2 3\n", b"V 2 2 2\n", b"  L 1 2\n", b"G wall\n", b"O part\n"])
+def test_an_obj_statement_in_capitals_is_refused_and_not_left_out(line: bytes):
+    small = line.split()[0].lower().decode()
+    with pytest.raises(InputError, match=f"line 5: a statement must be written in small letters.*; write {small}$"):
+        read_obj(Source("t.obj", SQUARE + line))
+
+
+TRIANGLE = b"0 0 0\n1 0 0\n0 1 0\n3 0 1 2\n"
+
+
+def test_what_follows_the_last_promised_record_of_a_ply_file_is_told():
+    head = ply_header("ascii", 3, 1).encode()
+    said = "after the last promised record not read; the header may promise too few"
+    assert read_ply(Source("t.ply", head + TRIANGLE + b"\n3 2 1 0\n\n")).notes == (f"1 line {said}",)
+    assert read_ply(Source("t.ply", head + TRIANGLE + b" \n\r\n")).notes == ()
+    head = ply_header("binary_big_endian", 3, 1).encode()
+    body = struct.pack(">9d", *range(9)) + struct.pack(">Biii", 3, 0, 1, 2)
+    assert read_ply(Source("t.ply", head + body + body)).notes == (f"85 bytes {said}",)
+    assert read_ply(Source("t.ply", head + body + b"\r\n")).notes == ()
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "words"),
+    [
+        ("vertex 3", "vertex " + "3" * 5000, r"line 4: a number of 5000 digits \(333333333333\.\.\.\) is no count"),
+        ("face 1", "face " + "9" * 19, "line 8: a number of 19 digits"),
+        ("double z", "double y", "line 7: property y stands there a second time"),
+        ("element face 1", "element vertex 1", "line 8: element vertex stands there a second time"),
+        ("uchar int", "uchar float", "vertex_index must be of a type of whole numbers, such as int; found float64"),
+    ],
+)
+def test_a_ply_header_that_promises_what_cannot_be_is_refused(old: str, new: str, words: str):
+    text = ply_header("ascii", 3, 1)
+    assert old in text
+    with pytest.raises(InputError, match=words):
+        read_ply(Source("t.ply", text.replace(old, new).encode() + TRIANGLE))
+
+
+@pytest.mark.parametrize(
+    ("kind", "words"),
+    [("float", "vertex2 must be of a type of whole numbers"), ("list uchar int", "must be one number")],
+)
+def test_a_ply_edge_must_end_at_whole_numbers(kind: str, words: str):
+    head = (
+        "ply\nformat ascii 1.0\nelement vertex 2\nproperty float x\nproperty float y\n"
+        f"element edge 1\nproperty int vertex1\nproperty {kind} vertex2\nend_header\n0 0\n1 0\n"
+    )
+    with pytest.raises(InputError, match=words):
+        read_ply(Source("t.ply", (head + ("0 nan\n" if kind == "float" else "0 1 1\n")).encode()))

@@ -11,7 +11,7 @@ import pytest
 
 from dec.errors import InputError
 from dec.files import read
-from dec.files.sources import printable, read_source
+from dec.files.sources import printable, read_source, whole_count
 
 
 def test_the_hash_and_size_are_those_of_the_bytes(tmp_path: Path):
@@ -119,3 +119,38 @@ def test_options_for_tables_are_refused_for_meshes(tmp_path: Path):
     (tmp_path / "edges.csv").write_bytes(b"from,to\nA,B\n")
     with pytest.raises(InputError, match=r"part\.obj is a mesh; a node table must be one of"):
         read(tmp_path / "edges.csv", tmp_path / "part.obj")
+
+
+@pytest.mark.parametrize(
+    ("how", "words"),
+    [
+        ("exec 0>/dev/null", "stdin cannot be read (Bad file descriptor)"),
+        ("exec 0<&-", "stdin is closed"),
+    ],
+)
+def test_a_standard_input_that_cannot_be_read_is_one_line_of_error(how: str, words: str):
+    folder = Path(read.__code__.co_filename).parents[2]
+    command = f'{how}; exec "{sys.executable}" -m dec check -'
+    done = subprocess.run(["/bin/sh", "-c", command], cwd=folder, capture_output=True, text=True, check=False)
+    assert (done.returncode, done.stdout) == (3, "")
+    assert words in done.stderr
+    assert done.stderr.count("\n") == 1
+
+
+def test_a_standard_input_without_bytes_or_room_is_an_input_error(monkeypatch: pytest.MonkeyPatch):
+    class Full(io.BytesIO):
+        def read(self, *_: object) -> bytes:
+            raise MemoryError
+
+    monkeypatch.setattr(sys, "stdin", io.StringIO("from,to\n"))
+    with pytest.raises(InputError, match="stdin cannot be read"):
+        read("-")
+    monkeypatch.setattr(sys, "stdin", io.TextIOWrapper(Full()))
+    with pytest.raises(InputError, match="stdin does not fit into memory"):
+        read("-")
+
+
+def test_a_count_has_at_most_18_digits():
+    assert whole_count("9" * 18, "t") == 10**18 - 1
+    with pytest.raises(InputError, match=r"^t line 1: a number of 19 digits"):
+        whole_count("1" + "0" * 18, "t line 1")

@@ -62,7 +62,7 @@ def test_a_table_of_one_column_needs_no_separator():
 
 def test_quoted_cells_keep_separators_marks_and_line_ends_and_lines_stay_true():
     columns, _ = read_csv(Source("t.csv", b'id,x\n"a,""b""\nc",1\n\n"d\r\n\r\ne",2\nf,3\n'))
-    assert columns["id"].cells.tolist() == ['a,"b"\nc', "d\n\ne", "f"]
+    assert columns["id"].cells.tolist() == ['a,"b"\nc', "d\r\n\r\ne", "f"]
     assert columns["id"].lines.tolist() == [2, 5, 8]
     assert columns["x"].place(2) == "t.csv line 8"
 
@@ -182,7 +182,7 @@ def test_any_table_written_by_the_standard_library_reads_back(rows, separator: s
     expected, lines, before = [], [], 0
     for row in reader:
         if row and (any(row) or (len(row) == 1 and quoting == csv.QUOTE_ALL)):
-            expected.append([cell.replace("\r\n", "\n").strip() for cell in row])
+            expected.append([cell.strip() for cell in row])
             lines.append(before + 1)
         before = reader.line_num
     _compare(text, expected, lines)
@@ -266,3 +266,15 @@ def test_parquet_integers_beside_empty_cells_stay_exact(tmp_path: Path):
     columns, _ = read_parquet(Source("e.parquet", (tmp_path / "e.parquet").read_bytes()))
     decimals = columns["flow"].decimals()
     assert (int(decimals.integers[0]), decimals.present.tolist()) == (2**60 + 1, [True, False])
+
+
+@pytest.mark.parametrize("end", ["\n", "\r\n", "\r"])
+def test_a_carriage_return_in_a_quoted_cell_stays_whatever_ends_the_lines(end: str):
+    """Two names that differ by it only stay two names, as the csv module keeps them."""
+    names = ["a\rb", "a b"] if end == "\r" else ["a\rb", "a\nb", "a\r\nb"]
+    rows = ["id,x", *(f'"{name}",1' for name in names), "z,2"]
+    text = end.join(rows) + end
+    expected = [row[0] for row in csv.reader(io.StringIO(text, newline="")) if row]
+    columns, _ = read_csv(Source("t.csv", text.encode()))
+    assert columns["id"].cells.tolist() == expected[1:] == [*names, "z"]
+    assert columns["x"].cells.tolist() == ["1"] * len(names) + ["2"]

@@ -59,6 +59,15 @@ def test_each_kind_of_value_is_written_in_one_way():
     ]  # fmt: skip
 
 
+@given(st.lists(st.text(st.sampled_from('ab ,"\r\n\t\0\u00a0\u2003é'), max_size=4), min_size=1, max_size=6))
+def test_a_column_of_text_is_quoted_as_each_text_alone_is(texts: list[str]):
+    together = csv_bytes({"id": texts, "x": [0] * len(texts)}).decode()
+    alone = [csv_bytes({"id": [text], "x": [0]}).decode().removeprefix("id,x\n") for text in texts]
+    assert together == "id,x\n" + "".join(alone)
+    mixed = csv_bytes({"id": [*texts, None], "x": [0] * len(texts) + [0]}).decode()
+    assert mixed == together + ",0\n"
+
+
 def test_a_single_column_keeps_its_empty_cells():
     data = csv_bytes({"id": ["A", "", "B"]})
     assert data == b'id\nA\n""\nB\n'

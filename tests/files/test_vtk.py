@@ -1,6 +1,10 @@
 """Legacy VTK through meshio, with its faults fenced off."""
 
+import re
 import sys
+import tempfile
+import threading
+import tracemalloc
 import warnings
 from pathlib import Path
 
@@ -12,6 +16,7 @@ from dec.errors import InputError
 from dec.files import read
 from dec.files.meshio_fence import fenced
 from dec.files.sources import Source
+from dec.files.vtk import read_vtk
 
 HEAD = "# vtk DataFile Version 3.0\nmade here\nASCII\nDATASET "
 SQUARE = HEAD + (
@@ -112,15 +117,20 @@ def _exit() -> None:
     sys.exit(1)
 
 
+def _say(text: str, category: type[Warning]) -> None:
+    # as NumPy warns from within: in the name of the module that called it
+    warnings.warn_explicit(text, category, "_vtk_42.py", 1, module="meshio.vtk._vtk_42")
+
+
 def _warn() -> str:
-    warnings.warn("odd\n value", RuntimeWarning, stacklevel=1)
-    warnings.warn("old", DeprecationWarning, stacklevel=1)
+    _say("odd\n value", RuntimeWarning)
+    _say("old", DeprecationWarning)
     print("Warning:\n skipped", file=sys.stderr)  # noqa: T201
     return "a mesh"
 
 
 def _stop() -> str:
-    warnings.warn("string or file could not be read to its end due to unmatched data", DeprecationWarning, stacklevel=1)
+    _say("string or file could not be read to its end due to unmatched data", DeprecationWarning)
     return "half a mesh"
 
 
@@ -144,3 +154,115 @@ def test_whatever_a_reader_does_is_a_note_or_one_input_error(monkeypatch: pytest
     with pytest.raises(KeyboardInterrupt):
         fenced(source, "vtk", "")
     assert capfd.readouterr() == ("", "")
+
+
+def test_other_threads_keep_their_output_and_warnings_while_a_reader_speaks(monkeypatch: pytest.MonkeyPatch, capfd):
+    """The first reader goes on only when another thread has printed and warned, and a second fence is waiting."""
+    inside, done = threading.Event(), threading.Event()
+    notes: dict[str, list[str]] = {}
+
+    def slow() -> str:
+        inside.set()
+        assert done.wait(20)
+        print("from the reader")  # noqa: T201
+        return "a mesh"
+
+    def read_one(name: str) -> None:
+        notes[name] = fenced(Source("t.vtk", b"data"), "vtk", "")[1]
+
+    monkeypatch.setattr(meshio, "vtk", _Reader(slow))
+    seen: list[str] = []
+    monkeypatch.setattr(warnings, "showwarning", lambda text, *_, **__: seen.append(str(text)))
+    stdout, stderr, shown = sys.stdout, sys.stderr, warnings.showwarning
+    threads = [threading.Thread(target=read_one, args=(name,)) for name in ("first", "second")]
+    threads[0].start()
+    assert inside.wait(20)
+    threads[1].start()
+    print("from another thread")  # noqa: T201
+    _say("of another thread", RuntimeWarning)
+    done.set()
+    for thread in threads:
+        thread.join(20)
+    assert notes == {name: ["the reader says: from the reader"] for name in ("first", "second")}
+    assert seen == ["of another thread"]
+    assert capfd.readouterr() == ("from another thread\n", "")
+    assert (sys.stdout, sys.stderr, warnings.showwarning) == (stdout, stderr, shown)
+
+
+def test_a_temporary_folder_without_room_is_an_input_error(monkeypatch: pytest.MonkeyPatch, tmp_path: Path):
+    """/dev/full takes no byte: writing to it fails as on a full disk."""
+    (tmp_path / "mesh.vtk").symlink_to("/dev/full")
+
+    class Full:
+        def __init__(self, **_: object) -> None:
+            pass
+
+        def __enter__(self) -> str:
+            return str(tmp_path)
+
+        def __exit__(self, *_: object) -> None:
+            pass
+
+    monkeypatch.setattr(tempfile, "TemporaryDirectory", Full)
+    with pytest.raises(InputError, match=r"t\.vtk: no room .* \(No space left on device\); .* TMPDIR"):
+        read_vtk(Source("t.vtk", SQUARE.encode()))
+
+
+TWICE = "SCALARS a double\nLOOKUP_TABLE default\n1 2 3 4\nFIELD FieldData 1\n%s 1 4 float\n5 6 7 8\n"
+POINT_DATA = SQUARE[: SQUARE.index("CELL_DATA")]
+
+
+@pytest.mark.parametrize("name", ["a", "%61"])
+def test_two_arrays_of_one_name_are_refused_as_only_the_last_would_stay(name: str):
+    with pytest.raises(InputError, match="two arrays at vertices are named 'a'; rename one"):
+        read_vtk(Source("t.vtk", (POINT_DATA + TWICE % name).encode()))
+    assert sorted(read_vtk(Source("t.vtk", (POINT_DATA + TWICE % "b").encode())).point_data) == ["a", "b", "wind speed"]
+
+
+def test_one_name_at_vertices_and_at_cells_is_no_clash():
+    text = SQUARE.replace("SCALARS q", "SCALARS wind%20speed")
+    parts = read_vtk(Source("t.vtk", text.encode()))
+    assert (list(parts.point_data), list(parts.cell_data), parts.notes) == (["wind speed"], ["wind speed"], ())
+
+
+@pytest.mark.parametrize(
+    ("text", "note"),
+    [
+        (POINT_DATA + "COLOR_SCALARS paint 3\n" + "0 0 0 " * 4 + "\n", "arrays at vertices not read: paint"),
+        # meshio leaves the cell data out as soon as there is a polygon
+        (SQUARE.replace("CELL_TYPES 2\n5\n5\n", "CELL_TYPES 2\n7\n7\n"), "arrays at cells not read: q"),
+        (
+            SQUARE.replace("POINTS 4", "FIELD FieldData 1\nTime 1 1 double\n0.5\nPOINTS 4"),
+            "arrays at neither vertices nor cells not read: Time",
+        ),
+    ],
+)
+def test_arrays_that_the_reader_leaves_out_are_told(text: str, note: str):
+    assert read_vtk(Source("t.vtk", text.encode())).notes == (
+        note + "; save it as VTU (unstructured grid) to keep them",
+    )
+
+
+@pytest.mark.parametrize(
+    ("text", "words"),
+    [
+        ("STRUCTURED_POINTS\nDIMENSIONS 3000 3000 3000\nORIGIN 0 0 0\nSPACING 1 1 1\n", "the grid of 27000000000"),
+        (
+            "RECTILINEAR_GRID\nDIMENSIONS 1 1 1\n"
+            + "".join(f"{axis}_COORDINATES 2000 float\n{'0 ' * 2000}\n" for axis in "XYZ"),
+            "the grid of 8000000000",
+        ),
+        ("STRUCTURED_GRID\nDIMENSIONS 9000 9000 9000\nPOINTS 1 float\n0 0 0\n", "the grid of 729000000000"),
+        ("UNSTRUCTURED_GRID\nPOINTS 900000000000 float\n0 0 0\n", "POINTS of 900000000000 entries"),
+        ("UNSTRUCTURED_GRID\nPOINTS " + "9" * 5000 + " float\n0 0 0\n", "POINTS: a number of 5000 digits"),
+        ("STRUCTURED_POINTS\nDIMENSIONS 1 1 " + "9" * 5000 + "\n", "DIMENSIONS: a number of 5000 digits"),
+    ],
+)
+def test_counts_beyond_the_file_are_refused_before_anything_is_made(text: str, words: str):
+    tracemalloc.start()
+    with pytest.raises(InputError, match=words) as caught:
+        read_vtk(Source("t.vtk", (HEAD + text).encode()))
+    assert re.search("cannot stand in a file of|is no count", str(caught.value))
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert peak < 10_000_000

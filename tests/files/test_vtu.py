@@ -3,6 +3,7 @@
 import base64
 import lzma
 import struct
+import tracemalloc
 import zlib
 from pathlib import Path
 
@@ -412,3 +413,48 @@ def test_the_sample_meshes_are_those_that_meshio_reads():
             np.testing.assert_array_equal(ours.point_data[name], values.reshape(len(values), -1))
         for name, blocks in theirs.cell_data.items():
             np.testing.assert_array_equal(ours.cell_data[name], np.concatenate(blocks).reshape(len(ours.kinds), -1))
+
+
+MANY = "9" * 5000
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "words"),
+    [
+        ('OfPoints="3"', f'OfPoints="{MANY}"', "NumberOfPoints of a Piece: a number of 5000 digits"),
+        ('Components="3"', f'Components="{MANY}"', "components of Points: a number of 5000 digits"),
+        ('format="ascii"', f'format="appended" offset="{MANY}"', "offset of Points: a number of 5000 digits"),
+    ],
+)
+def test_a_number_of_5000_digits_is_no_count(old: str, new: str, words: str):
+    data = file(text_piece()).decode()
+    assert old in data
+    with pytest.raises(InputError, match=words):
+        read_vtu(Source("t.vtu", data.replace(old, new).encode()))
+
+
+@pytest.mark.parametrize("block", [73, 2**31, 2**63, 2**64 - 1])
+@pytest.mark.parametrize("n_blocks", [1, 2])
+def test_packed_blocks_that_promise_more_than_the_array_holds_are_refused_before_they_are_unpacked(
+    block: int, n_blocks: int
+):
+    packed = zlib.compress(b"\0" * 30_000_000)
+    head = struct.pack(f"<{3 + n_blocks}Q", n_blocks, block, 0, *[len(packed)] * n_blocks)
+    text = base64.b64encode(head) + base64.b64encode(packed * n_blocks)
+    arrays = {"points": f'format="binary">{text.decode()}', "connectivity": ">0 1 2", "offsets": ">3", "types": ">5"}
+    data = file(piece(arrays), root='header_type="UInt64" compressor="vtkZLibDataCompressor"')
+    tracemalloc.start()
+    with pytest.raises(InputError, match=f"room for 72 bytes, its packed blocks promise {n_blocks * block};"):
+        read_vtu(Source("t.vtu", data))
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert peak < 10_000_000  # the file itself is 40 to 80 kB
+
+
+def test_counts_so_large_that_nothing_bounds_the_blocks_are_one_line_of_error():
+    head = struct.pack("<4Q", 1, 2**63, 0, 12)
+    text = base64.b64encode(head) + base64.b64encode(b"x" * 12)
+    arrays = {"points": f'format="binary">{text.decode()}', "connectivity": ">", "offsets": ">", "types": ">"}
+    data = file(piece(arrays, n_points=10**18 - 1), root='header_type="UInt64" compressor="vtkZLibDataCompressor"')
+    with pytest.raises(InputError, match="Points cannot be decoded"):
+        read_vtu(Source("t.vtu", data))

@@ -6,7 +6,9 @@ from itertools import pairwise
 import numpy as np
 import pytest
 
+from dec.audit.questions import balance, loops
 from dec.calculus.complex import Complex, grid
+from dec.calculus.dataset import Dataset, Field
 from dec.errors import InputError
 from dec.geometry import ranges
 from dec.geometry.accuracy import rule_error
@@ -358,3 +360,108 @@ def test_a_linear_field_stored_with_32_bits_stays_within_its_allowance():
     exactly = np.abs(K.coboundary(1)).astype(float) @ rule_error(K, turning)
     assert (work <= allowed).all()
     assert (work > exactly).any()
+
+
+def crowd(kind, n=7):
+    """Cells that all meet at one edge, one vertex or one face, more than CROWD once that is lowered."""
+    random = np.random.default_rng(n)
+    if kind == "fan":
+        rim = np.arange(n)
+        turn = 2 * np.pi * rim / n
+        points = np.concatenate([[[0.3, 0.2]], np.stack([np.cos(turn), np.sin(turn)], axis=1)])
+        return Complex.from_faces(np.stack([0 * rim, 1 + rim, 1 + (rim + 1) % n], axis=1), points=points)
+    points = random.normal(size=(n + 3, 3))
+    if kind == "book":
+        return Complex.from_faces([[0, 1, 3 + i] for i in range(n)] + [[0, 1, 2]], points=points)
+    if kind == "star":
+        return Complex.from_edges([0] * n, [3 + i for i in range(n)], n + 3, points=points)
+    return Complex.from_cells({"tetra": [[0, 1, 2, 3 + i] for i in range(n)]}, points=points)
+
+
+@pytest.mark.parametrize("kind", ["fan", "book", "star", "tetrahedra"])
+def test_where_a_crowd_of_cells_meets_the_estimate_is_never_below_the_one_that_looks_at_each(kind, monkeypatch):
+    K = crowd(kind)
+    random = np.random.default_rng(1)
+    places = [("vertices", 0), ("cells", K.dim)] if kind != "star" else [("vertices", 0)]
+    for at, degree in places:
+        field = random.normal(size=(K.counts[degree], K.points.shape[1]))
+        for quantity in ("circulation", "flux") if K.dim > 1 else ("circulation",):
+            exact = rule_error(K, field, at=at, quantity=quantity)
+            monkeypatch.setattr(ranges, "CROWD", 3)
+            bound = rule_error(K, field, at=at, quantity=quantity)
+            monkeypatch.undo()
+            assert (bound >= exact * (1 - 1e-12)).all()
+            assert (bound <= 40 * exact.max()).all()
+            if at == "vertices" and kind != "star":
+                assert (bound > exact * 1.001).any()  # the other way was taken
+
+
+def test_in_a_crowd_in_a_plane_the_estimate_of_a_linear_field_stays_rounding(monkeypatch):
+    monkeypatch.setattr(ranges, "CROWD", 3)
+    K = crowd("fan", 50)
+    field = K.points @ np.array([[1.0, 2.0], [-3.0, 0.5]])
+    assert rule_error(K, field).max() < 1e-13
+    assert rule_error(K, np.ones((50, 2)), at="cells").max() < 1e-13
+
+
+def test_a_crowd_without_extent_or_out_of_the_direction_has_no_range(monkeypatch):
+    monkeypatch.setattr(ranges, "CROWD", 3)
+    flat = Complex.from_faces([[0, 1, i] for i in range(2, 9)], points=np.arange(9.0)[:, None] * [1, 0, 0])
+    assert rule_error(flat, np.random.default_rng(0).normal(size=(9, 3))).max() < 1e-13
+    axes = np.array([[0, 0, 1.0]] * 4)
+    at = np.array([0, 4, 8]), np.array([0, 1, 2, 3] * 2)
+    up = np.array([[0, 0, 1.0]])
+    steps = np.arange(1, 5)[:, None, None] * np.eye(3)
+    for is_line, expected in ((False, 0), (True, 3)):
+        found = ranges.derivative_ranges(up, up, np.array([[0, 1]]), *at, steps, axes, np.ones(4, bool), is_line)
+        assert found.tolist() == [expected]
+
+
+@pytest.mark.parametrize("at", ["vertices", "cells"])
+@pytest.mark.parametrize("kind", ["fan", "book"])
+def test_twenty_thousand_cells_at_one_place_are_no_square_of_work(kind, at, monkeypatch):
+    """Counted, not timed: the cells that are looked at one by one are as many as the crowd is small."""
+    K = crowd(kind, 20_000)
+    monkeypatch.setattr(ranges, "_derivative_ranges", seen := Seen(ranges._derivative_ranges))
+    monkeypatch.setattr(ranges, "_value_ranges", values := Seen(ranges._value_ranges))
+    field = np.random.default_rng(0).normal(size=(K.counts[0 if at == "vertices" else 2], K.points.shape[1]))
+    assert np.isfinite(rule_error(K, field, at=at)).all()
+    if at == "vertices":
+        _, _, ends, offsets = seen.arguments[:4]
+        crowded = seen.arguments[9]
+        looked_at = np.diff(offsets)[ends][crowded < 0].sum()
+    else:
+        _, offsets, cells, facet_offsets, facets, around = values.arguments[:6]
+        uses = np.where(values.arguments[8] < 0, np.diff(around), 1)
+        per_cell = np.add.reduceat(uses[facets], facet_offsets[:-1])
+        looked_at = per_cell[cells].sum()
+    assert looked_at <= 20 * K.counts[1]
+
+
+class Seen:
+    """Passes a call on and keeps its arguments."""
+
+    def __init__(self, function):
+        self.function = function
+
+    def __call__(self, *arguments):
+        self.arguments = arguments
+        return self.function(*arguments)
+
+
+@pytest.mark.parametrize("face", [[0, 1, 1, 2], [0, 1, 2, 1], [0, 1, 2, 0, 3, 4]])
+def test_a_face_that_repeats_a_corner_has_no_estimate_and_no_audit_holds(face):
+    points = np.random.default_rng(0).random((8, 2))
+    K = Complex.from_faces([[5, 6, 7], face], points=points)
+    with pytest.raises(InputError, match=r"a face must name each corner once, face 1 \(from 0\) has the corners"):
+        rule_error(K, points)
+    data = Dataset(K, fields={"u": {"vertices": Field("u", "vertices", np.ones((8, 2)))}})
+    with pytest.raises(InputError, match="face 1"):
+        loops(data, field="u")
+    with pytest.raises(InputError, match="face 1"):
+        balance(data, field="u")
+
+
+def test_a_short_closed_grid_repeats_corners_by_right():
+    K = grid((1, 3), periodic=True)
+    assert np.isfinite(rule_error(K, np.ones((3, 2)))).all()

@@ -6,6 +6,8 @@ import numpy as np
 import pytest
 
 from dec.calculus.complex import Complex, grid
+from dec.errors import TopologyError
+from dec.topology import ranks
 from dec.topology.ranks import exact_rank, first_betti, top_betti
 
 
@@ -116,3 +118,27 @@ def test_the_parts_are_what_betti_adds_up():
     K = grid((3, 3), periodic=True)
     assert top_betti(K.incidences, K.sheets) == 1
     assert first_betti(K.coboundary(1), K.forest) == 2
+
+
+def heap_of_tetrahedra(n_cells, n_vertices):
+    random = np.random.default_rng(0)
+    return Complex.from_cells({"tetra": np.array([random.permutation(n_vertices)[:4] for _ in range(n_cells)])})
+
+
+def test_an_elimination_that_fills_up_is_refused_with_a_way_out(monkeypatch):
+    K = heap_of_tetrahedra(3000, 150)
+    monkeypatch.setattr(ranks, "_STEPS", 0)
+    monkeypatch.setattr(ranks, "_STEPS_EACH", 2)
+    words = "cannot be counted exactly in reasonable time: [0-9,]+ equations between [0-9,]+ cells .*take a part"
+    with pytest.raises(TopologyError, match=words):
+        K.betti()
+
+
+def test_the_allowance_of_steps_is_far_above_what_a_sponge_takes(monkeypatch):
+    """A third of it is enough for 12 x 12 x 12 cells, half of them missing: the most tangled of real shapes."""
+    monkeypatch.setattr(ranks, "_STEPS", 0)
+    monkeypatch.setattr(ranks, "_STEPS_EACH", ranks._STEPS_EACH / 3)
+    random = np.random.default_rng(0)
+    cells = grid((13, 13, 13)).solids["hexahedron"][random.random(12**3) < 0.5]
+    b0, b1, b2, b3 = Complex.from_cells({"hexahedron": cells}).betti()
+    assert (b0 > 1, b1 > 10, b2 > 1, b3) == (True, True, True, 0)
