@@ -1,8 +1,11 @@
 from .audit.condition import Condition as Condition
 from .audit.condition import check as check
+from .audit.presets import Preset as Preset
+from .audit.presets import preset as preset
 from .audit.questions import balance as balance
 from .audit.questions import loops as loops
 from .audit.record import Audit as Audit
+from .audit.record import Suspect as Suspect
 from .calculus.chain import Chain as Chain
 from .calculus.cochain import Cochain as Cochain
 from .calculus.complex import Complex as Complex

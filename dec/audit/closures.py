@@ -6,8 +6,7 @@ import numpy as np
 
 from dec.arrays import AnyArray, IntArray
 from dec.audit.exactly import common_unit
-from dec.audit.readings import Known, Readings
-from dec.calculus.complex import Complex
+from dec.audit.model import Model
 from dec.topology.graphs import Forest, joined, spanning_forest, tree_potentials
 
 __all__ = ["Closures", "closures"]
@@ -19,10 +18,10 @@ class Closures:
 
     Attributes
     ----------
-    group : int64 array, shape (n0,)
-        The vertices, those with a held potential taken as one.
+    group : int64 array, shape (n_vertices,)
+        The vertices, those with a held potential and the outside taken as one.
     anchor : int or None
-        The group of the held ones.
+        The group of the outside, where anything is held or measured at a vertex.
     forest : Forest
         Of the groups, by measured edges: from the held vertices, or else from where most edges meet.
     height : int64 or object array, shape (n_groups,)
@@ -43,27 +42,25 @@ class Closures:
     places: int
 
 
-def closures(network: Complex, readings: Readings, fixed: Known | None) -> Closures:
+def closures(model: Model) -> Closures:
     """How far the readings close, less the differences of the potentials held at the ends of a walk.
 
     Parameters
     ----------
-    network : Complex
-    readings : Readings
-    fixed : Known or None
-        Potentials that are held; a walk from one to another is a loop too.
+    model : Model
+        A walk from one held potential to another is a loop too.
     """
-    anchors = np.empty(0, np.int64) if fixed is None else np.flatnonzero(fixed.decimals.present)
-    group, n_groups = joined(anchors, network.counts[0])
-    tail, head = group[network.tail], group[network.head]
-    (reading, *known), places = common_unit(readings.decimals, *([] if fixed is None else [fixed.decimals]))
-    if known:
-        reading = reading - (known[0][network.head] - known[0][network.tail])
+    group, n_groups = joined(model.joint, model.n_vertices)
+    tail, head = group[model.tail], group[model.head]
+    known = [] if model.known is None else [model.known.decimals]
+    (reading, *held), places = common_unit(model.readings.decimals, *known)
+    for height in held:
+        reading = reading - (height[model.head] - height[model.tail])
     degree = np.bincount(np.concatenate([tail, head]), minlength=n_groups)
-    roots = np.concatenate([group[anchors[:1]], np.argsort(-degree, kind="stable")])
-    forest = spanning_forest(tail, head, n_groups, roots=roots, usable=readings.measured)
-    chords = np.flatnonzero(readings.measured & ~forest.contains(len(tail)))
-    height: AnyArray = tree_potentials(tail, head, forest, reading)
+    roots = np.concatenate([group[-1:], np.argsort(-degree, kind="stable")])
+    forest = spanning_forest(tail, head, n_groups, roots=roots, usable=model.measured)
+    chords = np.flatnonzero(model.measured & ~forest.contains(len(tail)))
+    height = tree_potentials(tail, head, forest, reading)
     misclosure = reading[chords] - (height[head[chords]] - height[tail[chords]])
-    anchor = int(group[anchors[0]]) if len(anchors) else None
+    anchor = int(group[-1]) if len(model.attached) or len(model.vertex) else None
     return Closures(group, anchor, forest, height, chords, misclosure, places)

@@ -5,6 +5,7 @@ import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -14,7 +15,7 @@ from dec.audit.names import counted
 from dec.calculus.columns import Column
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
-from dec.errors import InputError
+from dec.errors import InputError, TopologyError
 from dec.findings import Finding
 from dec.geometry.shape import check_shape
 from dec.topology.edges import unique_pairs
@@ -51,6 +52,22 @@ class Condition:
         """Whether every finding holds."""
         return all(f.holds for f in self.findings)
 
+    @property
+    def betti(self) -> tuple[int, ...] | None:
+        """The Betti numbers; None where the cells are so entangled that they cannot be counted in reasonable time."""
+        return self._betti[0]
+
+    @property
+    def _uncounted(self) -> str:
+        return self._betti[1]
+
+    @cached_property
+    def _betti(self) -> tuple[tuple[int, ...] | None, str]:
+        try:
+            return self.data.complex.betti(), ""
+        except TopologyError as error:
+            return None, str(error)
+
     def to_dict(self) -> dict[str, Any]:
         """The condition as plain Python objects, keys as in the JSON."""
         K = self.data.complex
@@ -61,7 +78,7 @@ class Condition:
             "counts": dict(zip(_CELLS, K.counts, strict=False)),
             "dim": K.dim,
             "euler": K.euler,
-            "betti": list(K.betti()),
+            "betti": None if self.betti is None else list(self.betti),
             "torsion": None if K.dim > 1 else [[] for _ in K.counts],
             "components": K.n_components,
             "manifold": K.is_manifold,
@@ -77,7 +94,7 @@ class Condition:
                 for f in self.findings
             ],
             "facts": dict(self.facts),
-            "notes": list(self.data.notes),
+            "notes": [*self.data.notes, *([self._uncounted] if self._uncounted else [])],
         }  # fmt: skip
 
     def to_json(self, *, indent: int | None = None) -> str:

@@ -54,9 +54,10 @@ def as_text(integer: int, places: int) -> str:
     return f"-{digits}" if integer < 0 else digits
 
 
-def within(integers: AnyArray, places: int, limit: float) -> BoolArray:
+def within(integers: AnyArray, places: int, limit: float | Fraction) -> BoolArray:
     """Whether each |integer| * 10**-places is at most the limit as written in decimal; decided exactly."""
-    most = floor(Fraction(repr(float(limit))) * 10**places)
+    written = limit if isinstance(limit, Fraction) else Fraction(repr(float(limit)))
+    most = floor(written * 10**places)
     return np.asarray(np.abs(integers) <= most, dtype=bool)
 
 

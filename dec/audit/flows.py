@@ -1,13 +1,15 @@
 """Balance by least squares: edges not measured are contracted, what is left to check are cuts."""
 
 import numpy as np
+from scipy.sparse import csr_array
 
 from dec.arrays import AnyArray, BoolArray, FloatArray, IntArray
-from dec.audit.adjustment import Adjustment, relative_gap, standings
+from dec.audit.adjustment import Adjustment, Shared, relative_gap, standings
+from dec.audit.evidence import Evidence, flow_evidence, with_common
 from dec.audit.exactly import as_floats, as_text, common_unit, net_inflow
 from dec.audit.laplacian import BLOCK, Laplacian
+from dec.audit.model import Model
 from dec.audit.names import counted, few, vertex_names
-from dec.audit.readings import Known, Readings
 from dec.calculus.complex import Complex
 from dec.errors import UnsolvableError
 from dec.topology.graphs import bridges, components, joined, spanning_forest, tree_flows, tree_potentials
@@ -18,38 +20,32 @@ __all__ = ["MOST_SPREAD_WORK", "adjust_flows", "contracted", "group_residuals"]
 MOST_SPREAD_WORK = 50_000_000
 
 
-def contracted(network: Complex, measured: BoolArray, opened: IntArray) -> tuple[IntArray, int]:
+def contracted(model: Model) -> tuple[IntArray, int]:
     """The groups of vertices that balance only together.
 
     Parameters
     ----------
-    network : Complex
-    measured : bool array, shape (n1,)
-    opened : int64 array
-        Vertices open to the outside, which make one group.
+    model : Model
 
     Returns
     -------
-    group : int64 array, shape (n0,)
+    group : int64 array, shape (n_vertices,)
+        The open vertices and the outside are one; ends of an edge not measured are one.
     count : int
     """
-    number, n_joined = joined(opened, network.counts[0])
-    idle = ~measured
-    count, label = components(number[network.tail[idle]], number[network.head[idle]], n_joined)
+    number, n_joined = joined(model.joint, model.n_vertices)
+    idle = ~model.measured
+    count, label = components(number[model.tail[idle]], number[model.head[idle]], n_joined)
     return label[number], count
 
 
-def group_residuals(
-    network: Complex, readings: Readings, supply: Known | None, group: IntArray, n_groups: int
-) -> tuple[AnyArray, int]:
+def group_residuals(model: Model, group: IntArray, n_groups: int) -> tuple[AnyArray, int]:
     """What every group of vertices takes in more than it gives out, exactly as written.
 
     Parameters
     ----------
-    network : Complex
-    readings : Readings
-    supply : Known or None
-    group : int64 array, shape (n0,)
+    model : Model
+    group : int64 array, shape (n_vertices,)
     n_groups : int
 
     Returns
@@ -58,25 +54,27 @@ def group_residuals(
         Inflow minus outflow plus supply, in units of 10**-places.
     places : int
     """
-    (flow, *known), places = common_unit(readings.decimals, *([] if supply is None else [supply.decimals]))
-    residual = net_inflow(group[network.tail], group[network.head], flow, n_groups)
+    supply = [] if model.known is None else [model.known.decimals]
+    (flow, *known), places = common_unit(model.readings.decimals, *supply)
+    residual = net_inflow(group[model.tail], group[model.head], flow, n_groups)
     for put_in in known:
         np.add.at(residual, group, put_in)
     return residual, places
 
 
-def adjust_flows(network: Complex, readings: Readings, supply: Known | None, opened: IntArray) -> Adjustment:
+def adjust_flows(network: Complex, model: Model, common: csr_array | None = None, figures: str = "auto") -> Adjustment:
     """Flows that balance at every closed vertex and lie nearest to the readings.
 
     Parameters
     ----------
     network : Complex
-    readings : Readings
+        For the names in messages.
+    model : Model
         Without standard deviations all readings weigh the same.
-    supply : Known or None
-        What is put in at vertices, exactly.
-    opened : int64 array
-        Vertices open to the outside.
+    common : csr_array, shape (m, k), or None
+        What one standard deviation of each common error adds to the readings.
+    figures : "auto", "all" or "estimate"
+        How the figures of single edges are come by in a network too large for an exact factor.
 
     Returns
     -------
@@ -94,52 +92,65 @@ def adjust_flows(network: Complex, readings: Readings, supply: Known | None, ope
     Minimises sum (x - y)^2 / sd^2 under D^T x + s = 0. With u from (D^T Q D) u = D^T y + s on the contracted graph,
     Q = diag(sd^2) and D its differences, x = y - Q D u. Source: Narasimhan and Jordache, Data Reconciliation and
     Gross Error Detection, 2000, chapter 3. An edge not measured follows when it is a bridge of the graph of such
-    edges, the open vertices taken as one.
+    edges, the open vertices taken as one. Common errors b = G' M y are taken from the readings first.
     """
-    n, tail, head = network.counts[0], network.tail, network.head
-    measured = readings.measured
-    sd = np.ones(len(tail)) if readings.sd is None else readings.sd
-    _refuse_surplus(network, supply, opened)
-    group, n_groups = contracted(network, measured, opened)
+    tail, head, n, sd, measured = model.tail, model.head, model.n_vertices, model.sd, model.measured
+    _refuse_surplus(network, model)
+    group, n_groups = contracted(model)
     checked = measured & (group[tail] != group[head])
     used = np.flatnonzero(checked)
-    ground = int(group[opened[0]]) if len(opened) else None
-    laplacian = Laplacian(group[tail[used]], group[head[used]], n_groups, sd[used] ** 2, ground)
-    put_in = np.zeros(n) if supply is None else supply.value
-    correction = np.where(measured, 0.0, np.nan)
-    correction[used], _ = laplacian.change(as_floats(*group_residuals(network, readings, supply, group, n_groups)))
-    deviation = correction[used] / sd[used]
-    flow = np.where(measured, readings.value + correction, 0.0)
-    redundancy, spread = _figures(laplacian, used, measured, sd)
-    inferred, flow = _inferred(network, measured, opened, flow, put_in)
+    outside = int(group[-1])
+    laplacian = Laplacian(group[tail[used]], group[head[used]], n_groups, sd[used] ** 2, outside)
+    missed = as_floats(*group_residuals(model, group, n_groups))
+    evidence, change = flow_evidence(laplacian, used, len(tail), missed, outside, figures)
+    shift: FloatArray = np.zeros(len(tail))
+    amounts: FloatArray = np.zeros(0)
+    shared, plain = None, evidence
+    if common is not None:
+        evidence = with_common(plain, common)
+        shared = None if plain.diagonal is None else Shared.of(plain, sd, common)
+        amounts = common.T @ evidence.score[: len(tail)]
+        shift = common @ amounts
+        change, _ = laplacian.change(missed - laplacian.gather @ shift[used])
+    correction = np.where(measured, -shift, np.nan)
+    correction[used] += change
+    deviation = change / sd[used]
+    put_in = np.zeros(n) if model.known is None else model.known.value
+    flow = np.where(measured, model.readings.value + correction, 0.0)
+    redundancy, spread = _figures(laplacian, evidence, used, model, shared, common, figures)
+    inferred, flow = _inferred(model, flow, put_in)
     if spread is not None:
-        _add_inferred_spread(laplacian, network, opened, measured, checked, inferred, sd, spread)
+        _add_inferred_spread(plain, model, inferred, shared, spread)
     closed = np.ones(n, dtype=bool)
-    closed[opened] = False
+    closed[model.joint] = False
     gap = (net_inflow(tail, head, flow, n) + put_in)[closed]
     flow[~measured & ~inferred] = np.nan
     return Adjustment(
         flow, correction, redundancy, spread, standings(measured, checked, inferred),
-        n_groups - laplacian.n_components, float(deviation @ deviation), group,
-        relative_gap(gap, flow, readings.value, put_in), laplacian.component[group],
+        n_groups - laplacian.n_components, float(deviation @ deviation + amounts @ amounts), group,
+        relative_gap(gap, flow, model.readings.value, put_in), laplacian.component[group], evidence,
+        laplacian.because, common is not None,
     )  # fmt: skip
 
 
-def _refuse_surplus(network: Complex, supply: Known | None, opened: IntArray) -> None:
-    if supply is None:
+def _refuse_surplus(network: Complex, model: Model) -> None:
+    if model.known is None:
         return
-    (amount,), places = common_unit(supply.decimals)
-    label, count = network.component_labels, network.n_components
+    (amount,), places = common_unit(model.known.decimals)
+    number, n_joined = joined(model.joint, model.n_vertices)
+    count, label = components(number[model.tail], number[model.head], n_joined)
+    label = label[number]
     total = np.zeros(count, dtype=amount.dtype)
     np.add.at(total, label, amount)
-    total[label[opened]] = 0
+    total[label[-1]] = 0
     wrong = np.flatnonzero(total != 0)
     if len(wrong):
-        part = int(wrong[0])
-        names = vertex_names(network, np.flatnonzero(label == part))
+        members = np.flatnonzero(label == wrong[0])
+        part, names = network.component_labels[members[0]], vertex_names(network, members)
         message = (
             f"part {part + 1} ({few(names)}; {counted(len(names), 'vertex', 'vertices')}) has no open vertex, yet its "
-            f"supplies add up to {as_text(int(total[part]), places)}, not 0; name an open vertex or correct a supply"
+            f"supplies add up to {as_text(int(total[wrong[0]]), places)}, not 0; name an open vertex or correct a "
+            "supply"
         )
         raise UnsolvableError(message)
 
@@ -149,31 +160,32 @@ def _summed(values: FloatArray, group: IntArray, count: int) -> FloatArray:
 
 
 def _figures(
-    laplacian: Laplacian, used: IntArray, measured: BoolArray, sd: FloatArray
-) -> tuple[FloatArray | None, FloatArray | None]:
-    """Return redundancy and adjusted sd of the measured edges; None twice above the size for all."""
-    if not laplacian.gives_all:
+    laplacian: Laplacian, evidence: Evidence, used: IntArray, model: Model, shared: Shared | None,
+    common: csr_array | None, figures: str,
+) -> tuple[FloatArray | None, FloatArray | None]:  # fmt: skip
+    """Return redundancy and adjusted sd of the measured edges; None twice where not all can be had."""
+    if evidence.diagonal is None:
         return None, None
-    nowhere = np.empty(0, np.int64)
-    share, slack, _ = laplacian.figures(nowhere, nowhere)
-    settled = bridges(laplacian.tail, laplacian.head, laplacian.n_vertices)  # known from the supplies alone
+    measured, sd = model.measured, model.sd
+    share, slack, _ = laplacian.figures(figures)
     redundancy, kept = np.where(measured, 0.0, np.nan), np.where(measured, 1.0, np.nan)
-    redundancy[used], kept[used] = np.where(settled, 1.0, share), np.where(settled, 0.0, slack)
-    return redundancy, sd * np.sqrt(kept)
+    redundancy[used], kept[used] = share, slack
+    if shared is None or common is None:
+        return redundancy, sd * np.sqrt(kept)
+    redundancy = np.where(measured, shared.redundancies(evidence, sd, common), np.nan)
+    return redundancy, np.sqrt(sd**2 * kept + shared.added(shared.left.T))
 
 
-def _inferred(
-    network: Complex, measured: BoolArray, opened: IntArray, flow: FloatArray, put_in: FloatArray
-) -> tuple[BoolArray, FloatArray]:
+def _inferred(model: Model, flow: FloatArray, put_in: FloatArray) -> tuple[BoolArray, FloatArray]:
     """Return which edges not measured follow from the others, and the flows with theirs filled in."""
-    number, n_joined = joined(opened, network.counts[0])
-    idle = np.flatnonzero(~measured)
-    tail, head = number[network.tail[idle]], number[network.head[idle]]
-    forest = spanning_forest(tail, head, n_joined, roots=number[opened[:1]])
-    surplus = net_inflow(network.tail, network.head, flow, network.counts[0]) + put_in
+    number, n_joined = joined(model.joint, model.n_vertices)
+    idle = np.flatnonzero(~model.measured)
+    tail, head = number[model.tail[idle]], number[model.head[idle]]
+    forest = spanning_forest(tail, head, n_joined, roots=number[-1:])
+    surplus = net_inflow(model.tail, model.head, flow, model.n_vertices) + put_in
     sent: AnyArray = _summed(surplus, number, n_joined)
     carried, _ = tree_flows(tail, head, forest, sent)
-    inferred = np.zeros(len(measured), dtype=bool)
+    inferred = np.zeros(len(model.tail), dtype=bool)
     inferred[idle[bridges(tail, head, n_joined)]] = True
     filled = flow.copy()
     filled[idle] = carried
@@ -181,28 +193,28 @@ def _inferred(
 
 
 def _add_inferred_spread(
-    laplacian: Laplacian, network: Complex, opened: IntArray, measured: BoolArray, checked: BoolArray,
-    inferred: BoolArray, sd: FloatArray, spread: FloatArray,
-) -> None:  # fmt: skip
+    plain: Evidence, model: Model, inferred: BoolArray, shared: Shared | None, spread: FloatArray
+) -> None:
     """Write the standard deviation of each inferred flow: that of the measured flows across the cut it closes."""
-    number, n_joined = joined(opened, network.counts[0])
-    tail, head = number[network.tail], number[network.head]
+    number, n_joined = joined(model.joint, model.n_vertices)
+    tail, head, m = number[model.tail], number[model.head], len(model.tail)
     lone = bridges(tail, head, n_joined)  # nothing else crosses the cut, so the supplies alone give the flow
     spread[inferred & lone] = 0.0
     edges = np.flatnonzero(inferred & ~lone)
     if not 0 < len(edges) * n_joined <= MOST_SPREAD_WORK:
         return
-    forest = spanning_forest(tail, head, n_joined, usable=~measured)
-    used, unchecked = np.flatnonzero(checked), np.flatnonzero(measured & ~checked)
+    forest = spanning_forest(tail, head, n_joined, usable=~model.measured)
+    variance = np.where(model.measured, model.sd, 0.0)[:, None] ** 2
     for block in np.split(edges, range(BLOCK, len(edges), BLOCK)):
-        across = np.zeros((len(tail), len(block)))
+        across = np.zeros((m, len(block)))
         for column, edge in enumerate(block.tolist()):
-            unit: AnyArray = np.zeros(len(tail))
+            unit: AnyArray = np.zeros(m)
             unit[edge] = 1.0
             side = tree_potentials(tail, head, forest, unit)
             across[:, column] = side[head] - side[tail]
-        weight = laplacian.conductance[:, None]
-        drawn = weight * across[used]
-        left = drawn + laplacian.change(laplacian.gather @ drawn)[0]
-        variance = (left**2 / weight).sum(axis=0) + (sd[unchecked] ** 2) @ across[unchecked] ** 2
-        spread[block] = np.sqrt(variance)
+        across[~model.measured] = 0.0
+        left = across - plain.of_readings(variance * across)[:m]
+        total = (variance * left**2).sum(axis=0)
+        if shared is not None:
+            total += shared.added(shared.left.T @ across)
+        spread[block] = np.sqrt(total)

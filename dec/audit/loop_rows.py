@@ -1,65 +1,141 @@
 """The loops of a network: a short basis, with what each misses to close."""
 
-from typing import Any
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any, overload
 
 import numpy as np
 from scipy.special import ndtri
 
-from dec.arrays import IntArray, SignArray
+from dec.arrays import BoolArray, FloatArray, IntArray, SignArray
 from dec.audit.closures import Closures
 from dec.audit.exactly import as_floats, within
-from dec.audit.names import edge_names, vertex_names
-from dec.audit.readings import Readings
+from dec.audit.model import Model
+from dec.audit.names import model_edge_names, vertex_names
 from dec.audit.verdict import Limits
 from dec.calculus.complex import Complex
 from dec.topology.graphs import Forest, fundamental_loops
 from dec.topology.polygons import Walks
 
-__all__ = ["loop_rows"]
+__all__ = ["LoopRows", "loop_rows"]
 
 _MOST_LOOPS = 10_000
 _MOST_LEGS = 200_000
 
 
-def loop_rows(network: Complex, readings: Readings, found: Closures, limits: Limits) -> list[dict[str, Any]]:
+@dataclass(frozen=True, slots=True, eq=False)
+class LoopRows(Sequence[dict[str, Any]]):
+    """Loops, worst first; a row is made when it is looked at.
+
+    Attributes
+    ----------
+    network : Complex
+    model : Model
+    number : int64 array, shape (k,)
+        Of each loop in its basis, from 1.
+    ends : int64 array, shape (k,)
+        Where its legs begin and end among all legs, as rows of two numbers.
+    edges, signs : int64 and int8 arrays
+        The legs of all loops.
+    misclosure, sd, statistic, limit : float64 arrays, shape (k,)
+    holds : bool array, shape (k,)
+    """
+
+    network: Complex
+    model: Model
+    number: IntArray
+    ends: IntArray
+    edges: IntArray
+    signs: SignArray
+    misclosure: FloatArray
+    sd: FloatArray
+    statistic: FloatArray
+    limit: FloatArray
+    holds: BoolArray
+
+    def __len__(self) -> int:
+        return len(self.number)
+
+    @overload
+    def __getitem__(self, place: int) -> dict[str, Any]: ...
+    @overload
+    def __getitem__(self, place: slice) -> list[dict[str, Any]]: ...
+    def __getitem__(self, place: int | slice) -> dict[str, Any] | list[dict[str, Any]]:
+        if isinstance(place, slice):
+            return [self._row(k) for k in range(len(self))[place]]
+        return self._row(range(len(self))[place])
+
+    def _row(self, k: int) -> dict[str, Any]:
+        legs = slice(*self.ends[k].tolist())
+        edges, signs = self.edges[legs], self.signs[legs]
+        names = model_edge_names(self.network, self.model.vertex, edges)
+        return {
+            "id": str(int(self.number[k])),
+            "legs": [[name, sign] for name, sign in zip(names.tolist(), signs.tolist(), strict=True)],
+            "misclosure": float(self.misclosure[k]), "sd": float(self.sd[k]), "statistic": float(self.statistic[k]),
+            "limit": float(self.limit[k]), "holds": bool(self.holds[k]),
+            "held": _held_ends(self.network, self.model, edges, signs),
+        }  # fmt: skip
+
+
+def loop_rows(
+    network: Complex, model: Model, found: Closures, limits: Limits, rule: FloatArray | None = None
+) -> LoopRows:
     """A basis of the loops, worst first, as rows for the record.
 
     Parameters
     ----------
     network : Complex
-    readings : Readings
+    model : Model
     found : Closures
     limits : Limits
+    rule : float64 array or None
+        How far each loop of the basis may miss, where a preset says so.
 
     Returns
     -------
-    list of dict
+    LoopRows
         The loops that close worst, at most 10,000 of them with 200,000 legs, but always one. A walk from one held
         vertex to another is a loop too, closed by their known difference: "held" then names the two.
     """
-    size = np.abs(as_floats(found.misclosure, found.places))
-    worst = np.argsort(-size, kind="stable")[:_MOST_LOOPS]
-    tail, head = found.group[network.tail], found.group[network.head]
+    amount = np.abs(as_floats(found.misclosure, found.places))
+    worst = np.argsort(-amount, kind="stable")[:_MOST_LOOPS]
+    tail, head = found.group[model.tail], found.group[model.head]
     walks = _walks(tail, head, found.forest, found.chords[worst])
-    return _rows(network, readings, limits, walks, worst, found)
+    ends = np.cumsum(np.concatenate([np.zeros(1, np.int64), *(np.diff(w.offsets) for w in walks)]))
+    kept = max(int(np.searchsorted(ends, _MOST_LEGS, side="right")) - 1, min(1, len(ends) - 1))
+    edges = np.concatenate([np.empty(0, np.int64), *(w.edges for w in walks)])[: ends[kept]]
+    signs = np.concatenate([np.empty(0, np.int8), *(w.signs for w in walks)])[: ends[kept]]
+    missed, readings = found.misclosure[worst[:kept]], model.readings
+    size, nothing = as_floats(missed, found.places), np.full(kept, np.nan)
+    if readings.sd is None:
+        most = limits.largest or 0.0
+        sd, statistic = nothing, nothing
+        allowed = np.full(kept, most) if rule is None else rule[worst[:kept]]
+        holds = within(missed, found.places, limits.written or 0.0) if rule is None else np.abs(size) <= allowed
+        order = np.argsort(-np.abs(size) / (1.0 if rule is None else allowed), kind="stable")
+    else:
+        sd = np.sqrt(np.add.reduceat(readings.sd[edges] ** 2, ends[:kept])) if kept else np.zeros(0)
+        allowed, statistic = float(ndtri(1 - limits.alpha / 2)) * sd, np.abs(size) / sd
+        holds, order = np.abs(size) <= allowed, np.argsort(-statistic, kind="stable")
+    return LoopRows(
+        network, model, worst[order] + 1, np.stack([ends[:-1], ends[1:]], axis=1)[order], edges, signs, size[order],
+        sd[order], statistic[order], allowed[order], holds[order],
+    )  # fmt: skip
 
 
-def _held_ends(
-    network: Complex, edges: IntArray, signs: SignArray, loop: IntArray, n_loops: int
-) -> list[list[str] | None]:
-    """Return for each loop None, or where it sets out and ends when held vertices close it."""
-    n = network.counts[0]
+def _held_ends(network: Complex, model: Model, edges: IntArray, signs: SignArray) -> list[str] | None:
+    """Return None, or where a loop sets out and ends when held vertices close it."""
     forward = signs > 0
-    start = np.where(forward, network.tail[edges], network.head[edges])
-    end = np.where(forward, network.head[edges], network.tail[edges])
-    places, where = np.unique(np.concatenate([loop * n + start, loop * n + end]), return_inverse=True)
+    start = np.where(forward, model.tail[edges], model.head[edges])
+    end = np.where(forward, model.head[edges], model.tail[edges])
+    places, where = np.unique(np.concatenate([start, end]), return_inverse=True)
     surplus = np.bincount(where, weights=np.repeat([-1.0, 1.0], len(edges)), minlength=len(places))
-    held: list[list[str] | None] = [None] * n_loops
-    first, last = places[surplus < 0], places[surplus > 0]
-    names = vertex_names(network, np.concatenate([first, last]) % n).tolist()
-    for k, number in enumerate((first // n).tolist()):
-        held[number] = [names[k], names[k + len(first)]]
-    return held
+    loose = [places[surplus < 0], places[surplus > 0]]
+    if not len(loose[0]):
+        return None
+    outside = model.n_vertices - 1
+    return ["outside" if v[0] == outside else str(vertex_names(network, v[:1])[0]) for v in loose]
 
 
 def _walks(tail: IntArray, head: IntArray, forest: Forest, chords: IntArray) -> list[Walks]:
@@ -71,32 +147,3 @@ def _walks(tail: IntArray, head: IntArray, forest: Forest, chords: IntArray) -> 
         legs += len(found[-1].edges)
         done, size = done + size, 2 * size
     return found
-
-
-def _rows(
-    network: Complex, readings: Readings, limits: Limits, walks: list[Walks], worst: IntArray, found: Closures
-) -> list[dict[str, Any]]:
-    ends = np.cumsum(np.concatenate([np.zeros(1, np.int64), *(np.diff(w.offsets) for w in walks)]))
-    kept = max(int(np.searchsorted(ends, _MOST_LEGS, side="right")) - 1, min(1, len(ends) - 1))
-    edges = np.concatenate([np.empty(0, np.int64), *(w.edges for w in walks)])[: ends[kept]]
-    signs = np.concatenate([np.empty(0, np.int8), *(w.signs for w in walks)])[: ends[kept]]
-    legs = [list(leg) for leg in zip(edge_names(network, edges).tolist(), signs.tolist(), strict=True)]
-    held = _held_ends(network, edges, signs, np.repeat(np.arange(kept), np.diff(ends[: kept + 1])), kept)
-    missed = found.misclosure[worst[:kept]]
-    size = as_floats(missed, found.places)
-    if readings.sd is None:
-        sd = statistic = np.full(kept, np.nan)
-        allowed = np.full(kept, limits.largest or 0.0)
-        holds, order = within(missed, found.places, limits.largest or 0.0), np.argsort(-np.abs(size), kind="stable")
-    else:
-        sd = np.sqrt(np.add.reduceat(readings.sd[edges] ** 2, ends[:kept])) if kept else np.zeros(0)
-        allowed, statistic = float(ndtri(1 - limits.alpha / 2)) * sd, np.abs(size) / sd
-        holds, order = np.abs(size) <= allowed, np.argsort(-statistic, kind="stable")
-    return [
-        {
-            "id": str(int(worst[k]) + 1), "legs": legs[ends[k] : ends[k + 1]], "misclosure": float(size[k]),
-            "sd": float(sd[k]), "statistic": float(statistic[k]), "limit": float(allowed[k]), "holds": bool(holds[k]),
-            "held": held[k],
-        }
-        for k in order.tolist()
-    ]  # fmt: skip

@@ -1,15 +1,18 @@
 """Ids as text, for tables, notes and messages."""
 
-from collections.abc import Iterable
+import difflib
+from collections.abc import Iterable, Mapping, Sequence
 
 import numpy as np
 
 from dec.arrays import IntArray, ObjectArray
 from dec.calculus.complex import Complex
+from dec.errors import InputError
 
-__all__ = ["NAMED", "counted", "edge_names", "few", "vertex_names"]
+__all__ = ["NAMED", "counted", "edge_names", "few", "model_edge_names", "refuse_no_edges", "vertex_names"]
 
 NAMED = 4
+_MOST_COMPARED = 20_000  # names among which a close one is looked for
 
 
 def vertex_names(network: Complex, vertices: IntArray | None = None) -> ObjectArray:
@@ -20,6 +23,51 @@ def vertex_names(network: Complex, vertices: IntArray | None = None) -> ObjectAr
 def edge_names(network: Complex, edges: IntArray | None = None) -> ObjectArray:
     """The ids of the given edges, or of all, as text; their numbers where they have none."""
     return _names(network.edge_ids, network.counts[1], edges)
+
+
+def model_edge_names(network: Complex, vertex: IntArray, edges: IntArray) -> ObjectArray:
+    """The ids of edges, those numbered after the network's as the reading at a vertex that they stand for.
+
+    Parameters
+    ----------
+    network : Complex
+    vertex : int64 array
+        Vertex of each such reading.
+    edges : int64 array
+    """
+    own, n1 = edges < network.counts[1], network.counts[1]
+    found = np.empty(len(edges), dtype=object)
+    found[own] = edge_names(network, edges[own])
+    found[~own] = [f"at {name}" for name in vertex_names(network, vertex[edges[~own] - n1])]
+    return found
+
+
+def refuse_no_edges(network: Complex, asked: Sequence[str], sensors: Mapping[str, int]) -> None:
+    """Nothing, or InputError where a name that was asked of is no edge: a sensor on one, or a slip of the pen.
+
+    Parameters
+    ----------
+    network : Complex
+    asked : sequence of str
+    sensors : mapping of str to int
+        Names of sensors, and the number of the edge that each reads.
+    """
+    known = edge_names(network).tolist()
+    there = set(known)
+    wrong = next((name for name in asked if name not in there), None)
+    if wrong is None:
+        return
+    if wrong in sensors:
+        edge = known[sensors[wrong]]
+        message = (
+            f"what-if names {wrong!r}, which is a sensor on edge {edge!r}; what-if goes by edge: name {edge!r}, and "
+            "all its readings change together"
+        )
+        raise InputError(message)
+    close = difflib.get_close_matches(wrong, known, n=2) if len(known) <= _MOST_COMPARED else []
+    hint = f"close names: {', '.join(map(repr, close))}" if close else "edges are named by their ids as text"
+    message = f"what-if names {wrong!r}, which is no edge; {hint}"
+    raise InputError(message)
 
 
 def few(names: Iterable[str]) -> str:
@@ -41,4 +89,8 @@ def counted(number: int, one: str, many: str) -> str:
 
 def _names(ids: ObjectArray | None, count: int, chosen: IntArray | None) -> ObjectArray:
     numbers = np.arange(count) if chosen is None else chosen
-    return np.array([str(name) for name in (numbers if ids is None else ids[numbers])], dtype=object)
+    names: ObjectArray = (numbers if ids is None else ids[numbers]).astype(object)
+    listed = names.tolist()
+    if set(map(type, listed)) <= {str}:
+        return names
+    return np.array(list(map(str, listed)), dtype=object)

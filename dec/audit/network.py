@@ -1,139 +1,296 @@
 """The two audits of a network: readings in, record out."""
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+from functools import partial
 from typing import Any
 
 import numpy as np
+from scipy.sparse import csr_array, vstack
 
-from dec.arrays import AnyArray, FloatArray
+from dec.arrays import AnyArray, IntArray
 from dec.audit.adjustment import Adjustment
+from dec.audit.asked import Asked, unfit_preset
 from dec.audit.closures import closures
+from dec.audit.common_errors import common_errors
 from dec.audit.differences import adjust_differences
 from dec.audit.flows import adjust_flows, group_residuals
+from dec.audit.inseparable import difference_classes, flow_classes
 from dec.audit.loop_rows import loop_rows
-from dec.audit.names import counted, edge_names, vertex_names
-from dec.audit.readings import Readings, known_at_vertices, named_vertices, read_readings
+from dec.audit.model import Model, model_of
+from dec.audit.names import counted, refuse_no_edges, vertex_names
+from dec.audit.network_tables import (
+    at_vertex_columns,
+    contradictable,
+    edge_columns,
+    joint_names,
+    limit_columns,
+    reading_columns,
+)
+from dec.audit.parts import part_rows
+from dec.audit.presets import Preset
+from dec.audit.readings import Known, Readings, known_at_vertices, named_vertices, read_readings, with_storage
 from dec.audit.record import Audit
-from dec.audit.remarks import datum_notes, general_notes, not_shown, self_loop_notes, supply_notes
-from dec.audit.suspects import edge_suspects, edge_tests
-from dec.audit.verdict import Verdict, judged, read_limits
-from dec.audit.vertex_rows import vertex_rows
+from dec.audit.remarks import (
+    common_note,
+    datum_notes,
+    difference_notes,
+    general_notes,
+    limit_note,
+    not_shown,
+    self_loop_notes,
+    supply_notes,
+)
+from dec.audit.repeat_tables import table_name
+from dec.audit.repeats import applied_notes, combined_readings
+from dec.audit.rules import chosen_rule, line_lengths, loop_allowances, meter_accuracy, vertex_allowances
+from dec.audit.suspects import Naming
+from dec.audit.testing import Tested, tested
+from dec.audit.verdict import Limits, Verdict, judged, read_limits
+from dec.audit.vertex_rows import group_names, vertex_rows
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
+from dec.errors import InputError
 
 __all__ = ["audit_differences", "audit_flows"]
 
 _METHODS = {
     "balance": "weighted least squares: flows that balance and lie nearest to the readings in their standard "
-    "deviations; edges not measured are contracted; one sparse symmetric factorisation",
+    "deviations; edges not measured are contracted",
     "loop": "weighted least squares: differences of potentials that lie nearest to the readings in their standard "
-    "deviations; edges not measured are left out; one sparse symmetric factorisation",
+    "deviations; edges not measured are left out",
 }
 
 
-def audit_flows(
-    net: Dataset, value: str, sd: object, opened: str | Iterable[object] | None, supply: object, alpha: float,
-    limit: object, unit: str | None,
-) -> Audit:  # fmt: skip
+@dataclass(frozen=True, slots=True)
+class _Found:
+    """What both laws have found when the record is written."""
+
+    network: Complex
+    model: Model
+    adjustment: Adjustment
+    limits: Limits
+    verdict: Verdict
+    tests: Tested
+
+
+def audit_flows(net: Dataset, asked: Asked) -> Audit:
     """Whether flows balance at every closed vertex; see `dec.balance`."""
     network = net.complex
-    limits = read_limits(alpha, limit, sd)
-    readings = read_readings(net, value, sd)
-    open_vertices = named_vertices(net, opened, "open")
-    known, notes = None, []
-    if supply is not None:
-        known = known_at_vertices(net, supply, "supply")
-        guessed = np.setdiff1d(np.flatnonzero(~known.decimals.present), open_vertices)
-        open_vertices = np.union1d(open_vertices, guessed)
-        notes = supply_notes(network, guessed)
-    adjustment = adjust_flows(network, readings, known, open_vertices)
+    limits, rule = read_limits(asked.alpha, asked.limit, asked.sd), chosen_rule(asked)
+    _refuse_rule(rule, "balance")
+    readings = _readings(net, asked, rule)
+    opened = named_vertices(net, asked.open, "open")
+    known, opened, notes, said = _supplies(net, asked, opened)
+    model = model_of(network, readings, known, opened, "supply")
+    common, shared = _common(net, asked, readings, model)
+    adjustment = adjust_flows(network, model, common, asked.figures)
     group = adjustment.group
-    residual, places = group_residuals(network, readings, known, group, int(group.max(initial=-1)) + 1)
+    n_groups = int(group.max(initial=-1)) + 1
+    residual, places = group_residuals(model, group, n_groups)
     closed = np.ones(len(residual), dtype=bool)
-    closed[group[open_vertices]] = False
-    verdict = judged(adjustment, limits, residual[closed], places, with_sd=readings.sd is not None)
-    rows = vertex_rows(network, readings, group, open_vertices, residual, places)
-    notes += general_notes(network, readings, adjustment) + self_loop_notes(network, balance=True)
-    asked = {
-        "value": value, "sd": readings.sd_said, "open": vertex_names(network, open_vertices).tolist(),
-        "supply": _said(supply), "alpha": limits.alpha, "limit": limits.largest, "unit": unit,
-    }  # fmt: skip
-    return _record("balance", net, readings, adjustment, verdict, rows, (), notes, asked)
+    closed[group[-1]] = False
+    allowed = vertex_allowances(net, asked, rule, model, group, n_groups)
+    verdict = judged(
+        adjustment, model.readings, limits, residual[closed], places, None if allowed is None else allowed[closed],
+        _said_by(rule, "vertices"),
+    )  # fmt: skip
+    naming = Naming(network, model, partial(_group_name, network, group), "supply", asked.unit)
+    classes = partial(flow_classes, model, group, adjustment.evidence.testable)
+    tests = tested(model, adjustment, classes, naming, asked, limits, balance=True)
+    rows, shown = vertex_rows(network, model, group, residual, places)
+    rows |= _fault_columns(tests, np.where(shown >= 0, len(model.tail) + shown, -1))
+    judging = model.readings.sd is None and adjustment.dof > 0
+    rows |= limit_columns(residual, places, shown, limits if judging else None, allowed if judging else None)
+    rows["group"] = joint_names(network, group)
+    notes = [*shared, *notes, *self_loop_notes(network, balance=True)]
+    said = {"open": vertex_names(network, opened).tolist(), "supply": _said(asked.supply), **said}
+    found = _Found(network, model, contradictable(adjustment, readings), limits, verdict, tests)
+    return _record("balance", net, found, rows, (), notes, asked, said)
 
 
-def audit_differences(
-    net: Dataset, value: str, sd: object, fixed: object, alpha: float, limit: object, unit: str | None
-) -> Audit:
+def audit_differences(net: Dataset, asked: Asked) -> Audit:
     """Whether differences close round every loop; see `dec.loops`."""
-    network = net.complex
-    limits = read_limits(alpha, limit, sd)
-    readings = read_readings(net, value, sd)
-    known = None if fixed is None else known_at_vertices(net, fixed, "fixed")
-    held = np.zeros(network.counts[0], dtype=bool) if known is None else known.decimals.present
-    found = closures(network, readings, known)
-    adjustment = adjust_differences(network, readings, known, found)
-    loops = loop_rows(network, readings, found, limits)
-    verdict = judged(adjustment, limits, found.misclosure, found.places, with_sd=readings.sd is not None)
-    notes = general_notes(network, readings, adjustment)
+    network, n = net.complex, net.complex.counts[0]
+    limits, rule = read_limits(asked.alpha, asked.limit, asked.sd), chosen_rule(asked)
+    _refuse_rule(rule, "loop")
+    readings = _readings(net, asked, rule)
+    known = None if asked.fixed is None else known_at_vertices(net, asked.fixed, "fixed", asked.fixed_sd)
+    lengths = line_lengths(net, asked, rule, readings)
+    model = model_of(network, readings, known, None, "fixed")
+    if lengths is not None:  # random errors of equal size per km
+        model = replace(model, relative=np.sqrt(np.where(readings.measured, lengths, 1.0)))
+    found = closures(model)
+    common, notes = _common(net, asked, readings, model)
+    adjustment = adjust_differences(model, found, common, asked.figures)
+    allowed = loop_allowances(asked, rule, lengths, model, found)
+    loops = loop_rows(network, model, found, limits, allowed)
+    said_by = _said_by(rule, "loops")
+    verdict = judged(adjustment, model.readings, limits, found.misclosure, found.places, allowed, said_by)
+    naming = Naming(network, model, partial(_vertex_name, network, model.attached), "potential", asked.unit)
+    classes = partial(difference_classes, model, adjustment.evidence.testable)
+    tests = tested(model, adjustment, classes, naming, asked, limits, balance=False)
+    notes += difference_notes(asked, lengths is not None)
     if len(loops) < len(found.chords):
         notes.append(
             f"of {len(found.chords)} loops the {len(loops)} with the largest misclosures are listed; all were checked"
         )
-    if limit is not None and len(found.chords) > 1:
+    if asked.limit is not None and len(found.chords) > 1:
         notes.append("the limit is held against the loops of one basis; every other loop is a sum of these")
-    notes += self_loop_notes(network, balance=False) + datum_notes(network, held, adjustment.part)
-    n, nothing = network.counts[0], np.full(network.counts[0], np.nan)
+    held = np.zeros(n, dtype=bool)
+    held[np.append(model.attached, model.vertex)] = True
+    notes += self_loop_notes(network, balance=False) + datum_notes(network, held, adjustment.part[:n])
+    place = np.full(n, -1)
+    place[model.attached] = len(model.tail) + np.arange(len(model.attached))
+    nothing = np.full(n, np.nan)
     rows = {
         "id": vertex_names(network), "residual": nothing, "sd": nothing, "statistic": nothing,
-        "potential": _or_nan(adjustment.potential, n),
-        "potential_sd": _or_nan(None if readings.sd is None else adjustment.potential_sd, n),
+        "potential": nothing if adjustment.potential is None else adjustment.potential[:n],
+        "potential_sd": nothing if readings.sd is None or adjustment.potential_sd is None
+        else adjustment.potential_sd[:n],
+    } | _fault_columns(tests, place)  # fmt: skip
+    rows |= {"limit": nothing, "holds": nothing, "group": np.full(n, "", dtype=object)}
+    said: dict[str, object] = {
+        "fixed": vertex_names(network, np.flatnonzero(held)).tolist(),
+        "fixed_sd": None if known is None else known.sd_said,
+    }
+    found_all = _Found(network, model, contradictable(adjustment, readings), limits, verdict, tests)
+    return _record("loop", net, found_all, rows, loops, notes, asked, said)
+
+
+def _refuse_rule(rule: Preset | None, law: str) -> None:
+    message = None if rule is None else unfit_preset(rule.name, rule.sets, law)
+    if message is not None:
+        raise InputError(message)
+
+
+def _said_by(rule: Preset | None, what: str) -> tuple[str, str]:
+    return ("the limit" if rule is None else f"preset {rule.name}", what)
+
+
+def _readings(net: Dataset, asked: Asked, rule: Preset | None) -> Readings:
+    accuracy = meter_accuracy(asked, rule)
+    if asked.readings is None:
+        readings = read_readings(net, asked.value, accuracy)
+    else:
+        readings = combined_readings(net, asked.readings, asked.value, accuracy, decimal=asked.decimal)
+    asked_of = [*asked.what_if.turned, *(asked.what_if.scaled or {}), *asked.what_if.left_out]
+    if asked_of:
+        rows = readings.repeats
+        sensors = {} if rows is None else dict(zip(rows.sensor.tolist(), rows.edge.tolist(), strict=True))
+        refuse_no_edges(net.complex, list(map(str, asked_of)), sensors)
+    return asked.what_if.applied(net.complex, readings)
+
+
+def _supplies(
+    net: Dataset, asked: Asked, opened: IntArray
+) -> tuple[Known | None, IntArray, list[str], dict[str, object]]:
+    """Return what goes in at vertices, those that are open after all, notes, and how it was given."""
+    known, notes = None, []
+    said: dict[str, object] = {"supply_sd": None, "storage": _said(asked.storage), "storage_sd": None}
+    if asked.supply is not None:
+        known = known_at_vertices(net, asked.supply, "supply", asked.supply_sd)
+        guessed = np.setdiff1d(np.flatnonzero(~known.decimals.present), opened)
+        opened = np.union1d(opened, guessed)
+        notes, said["supply_sd"] = supply_notes(net.complex, guessed), known.sd_said
+    if asked.storage is not None:
+        stored = known_at_vertices(net, asked.storage, "storage", asked.storage_sd)
+        known, said["storage_sd"] = with_storage(known, stored), stored.sd_said
+    return known, opened, notes, said
+
+
+def _common(net: Dataset, asked: Asked, readings: Readings, model: Model) -> tuple[csr_array | None, list[str]]:
+    """Return what common errors add to the readings of the model, those at vertices sharing none, and a note."""
+    if asked.common is None:
+        return None, []
+    found = common_errors(net, readings, asked.common, asked.common_sd)
+    moves = found.moves
+    if not moves.shape[1]:
+        return None, [f"column {asked.common} names no group with a reading: no error is shared"]
+    more = csr_array((len(model.tail) - moves.shape[0], moves.shape[1]))
+    return csr_array(vstack([moves, more])), [common_note(found, readings)]
+
+
+def _group_name(network: Complex, group: IntArray, number: int) -> str:
+    return str(group_names(network, group, np.array([number]))[0])
+
+
+def _vertex_name(network: Complex, vertices: IntArray, number: int) -> str:
+    return str(vertex_names(network, vertices[[number]])[0])
+
+
+def _fault_columns(tests: Tested, at: IntArray) -> dict[str, AnyArray]:
+    """Return the columns of a vertex table that say what an error there would be; -1 where there is no such error."""
+    columns = {
+        "fault": tests.estimate, "fault_sd": tests.estimate_sd, "fault_statistic": tests.statistic,
     }  # fmt: skip
-    asked = {
-        "value": value, "sd": readings.sd_said, "fixed": vertex_names(network, np.flatnonzero(held)).tolist(),
-        "alpha": limits.alpha, "limit": limits.largest, "unit": unit,
-    }  # fmt: skip
-    return _record("loop", net, readings, adjustment, verdict, rows, loops, notes, asked)
+    there, found = at >= 0, dict[str, AnyArray]()
+    for name, values in columns.items():
+        found[name] = np.full(len(at), np.nan)
+        found[name][there] = values[at[there]]
+    found["class"] = np.zeros(len(at), np.int64)
+    found["class"][there] = tests.class_number[at[there]]
+    found["detectable"] = np.full(len(at), np.nan)
+    found["detectable"][there] = tests.detectable[at[there]]
+    return found
 
 
 def _record(
-    law: str, net: Dataset, readings: Readings, adjustment: Adjustment, verdict: Verdict,
-    vertices: Mapping[str, AnyArray], loops: Sequence[Mapping[str, Any]], notes: list[str], asked: Mapping[str, object],
+    law: str, net: Dataset, found: _Found, vertices: Mapping[str, AnyArray], loops: Sequence[Mapping[str, Any]],
+    notes: list[str], asked: Asked, said: dict[str, object],
 ) -> Audit:  # fmt: skip
-    network = net.complex
-    statistic, detectable = edge_tests(readings, adjustment)
-    tables = {"edges": _edge_rows(network, readings, adjustment, statistic, detectable), "vertices": vertices}
+    network, model, adjustment, tests = found.network, found.model, found.adjustment, found.tests
+    readings, n1, balance = model.readings, network.counts[1], law == "balance"
+    tables = {"edges": edge_columns(network, model, adjustment, tests), "vertices": vertices}
+    if len(model.vertex):
+        tables["at_vertices"] = at_vertex_columns(network, model, adjustment, tests)
+    repeats = readings.repeats
+    if repeats is not None:
+        tables["readings"] = reading_columns(network, repeats, adjustment)
+        notes = [*repeats.notes, *applied_notes(network, repeats), *notes]
     counts = {
-        "vertices": network.counts[0], "edges": network.counts[1], "components": network.n_components,
-        "loops": network.counts[1] - network.counts[0] + network.n_components, "measured": int(readings.measured.sum()),
+        "vertices": network.counts[0], "edges": n1, "components": network.n_components,
+        "loops": n1 - network.counts[0] + network.n_components, "measured": int(model.measured[:n1].sum()),
     }  # fmt: skip
-    suspects = edge_suspects(network, readings, adjustment, statistic, balance=law == "balance")
+    question = {
+        "value": asked.value, "sd": readings.sd_said, **said, "alpha": found.limits.alpha,
+        "limit": found.limits.largest, "unit": asked.unit, "critical": tests.critical,
+        "critical_said": tests.critical_said, "common": asked.common, "common_sd": _said(asked.common_sd),
+        "readings": None if asked.readings is None else table_name(asked.readings), "preset": _said(asked.preset),
+        "sidak": bool(asked.sidak), "robust": bool(asked.robust), "figures": asked.figures,
+        "what_if": asked.what_if.to_dict(),
+    }  # fmt: skip
+    rule = chosen_rule(asked)
+    extra: dict[str, Any] = {
+        "closes_to": adjustment.closes_to, "errors": tests.several, "chance": tests.chance, "robust": tests.robust,
+        "parts": part_rows(network, model, adjustment, found.limits.alpha, balance=balance),
+    }  # fmt: skip
+    if rule is not None:
+        extra["rule"] = rule.sentence
+        notes = [f"preset {rule.sentence}", *notes]
+    verdict = found.verdict
+    if verdict.said:
+        extra["verdict"] = verdict.said
+    if verdict.holds is False and readings.sd is None and (asked.limit is not None or rule is not None):
+        notes.append(limit_note("vertex" if balance else "loop"))
+    notes = general_notes(network, model, adjustment, tests) + notes
+    dof = adjustment.dof + (0 if repeats is None else repeats.dof)
+    shown = net if repeats is None or repeats.input is None else net.with_inputs(*net.inputs, repeats.input)
+    again = partial(audit_flows if balance else audit_differences, net)
     return Audit(
-        law, verdict.holds, net, counts, adjustment.dof, verdict.chi_square, verdict.limit, verdict.p_value,
-        tables, loops, suspects, (*net.notes, *notes), not_shown(readings, adjustment, balance=law == "balance"),
-        asked, _METHODS[law], network.cochain(1, adjustment.adjusted), {"closes_to": adjustment.closes_to},
+        law, verdict.holds, shown, counts, dof, verdict.chi_square, verdict.limit, verdict.p_value,
+        tables, loops, tests.suspects, (*net.notes, *notes),
+        not_shown(model, adjustment, tests, balance=balance, unit=asked.unit),
+        question, f"{_METHODS[law]}; {adjustment.because}", network.cochain(1, adjustment.adjusted[:n1]), extra,
+        lambda what_if: again(replace(asked, what_if=what_if)),
     )  # fmt: skip
 
 
-def _edge_rows(
-    network: Complex, readings: Readings, adjustment: Adjustment, statistic: FloatArray, detectable: FloatArray
-) -> dict[str, AnyArray]:
-    n, names, unsure = network.counts[1], vertex_names(network), readings.sd is None
-    return {
-        "id": edge_names(network), "from": names[network.tail], "to": names[network.head], "value": readings.value,
-        "sd": np.where(readings.measured, _or_nan(readings.sd, n), np.nan),
-        "adjusted": adjustment.adjusted, "adjusted_sd": _or_nan(None if unsure else adjustment.adjusted_sd, n),
-        "correction": adjustment.correction, "redundancy": _or_nan(adjustment.redundancy, n),
-        "statistic": statistic, "detectable": detectable, "standing": adjustment.standing,
-    }  # fmt: skip
-
-
-def _or_nan(values: FloatArray | None, n: int) -> FloatArray:
-    return np.full(n, np.nan) if values is None else values
-
-
-def _said(given: object) -> str | None:
+def _said(given: object) -> str | float | None:
     if given is None or isinstance(given, str):
         return given
+    if isinstance(given, Preset):
+        return given.name
     if isinstance(given, Mapping):
         return counted(len(given), "vertex by id", "vertices by id")
-    return "one number a vertex"
+    return float(given) if isinstance(given, int | float | np.number) else "one number a vertex"

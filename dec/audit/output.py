@@ -12,7 +12,26 @@ from dec.files.tables_out import csv_bytes
 from dec.files.vtu import vtu_bytes, vtu_notes
 from dec.solvers.solution import Solution
 
-__all__ = ["flow_bytes", "result_bytes", "result_notes", "vertex_bytes"]
+__all__ = ["flow_bytes", "refuse_ending", "result_bytes", "result_notes", "vertex_bytes"]
+
+_TABLE_ENDINGS = (".csv", ".tsv", ".txt", "")  # of files that hold a table with commas, all alike
+
+
+def refuse_ending(option: str, name: str, *, is_table: bool) -> None:
+    """Nothing, or InputError where a file's ending promises something else than what is written to it.
+
+    Parameters
+    ----------
+    option, name : str
+        What asks for the file, for the message, and its name.
+    is_table : bool
+        Whether a table is written to it, which may end in .csv, .tsv, .txt or nothing; else a mesh, in .vtu.
+    """
+    if PurePath(name).suffix.lower() in (_TABLE_ENDINGS if is_table else (".vtu",)):
+        return
+    fitting = "a table, as .csv, .tsv, .txt or without an ending" if is_table else "a mesh, as .vtu"
+    message = f"{option} {PurePath(name).name}: the result must be written as {fitting}"
+    raise InputError(message)
 
 
 def result_bytes(audit: Audit, name: str) -> bytes:
@@ -22,9 +41,10 @@ def result_bytes(audit: Audit, name: str) -> bytes:
     ----------
     audit : Audit
     name : str
-        The file's name; its suffix says what is made: ``.csv`` a table of the edges of a network, where the adjusted
-        values stand in a column of their own and the raw ones stay as read; ``.vtu`` the mesh with its fields and one
-        value and limit a cell.
+        The file's name; its suffix says what is made: ``.csv``, ``.tsv``, ``.txt`` or none a table of the edges of a
+        network with commas, where the adjusted values stand in a column of their own and the raw ones stay as read (of
+        a table of readings: what they come to on the edge); ``.vtu`` the mesh with its fields and one value and limit a
+        cell.
 
     Returns
     -------
@@ -35,21 +55,19 @@ def result_bytes(audit: Audit, name: str) -> bytes:
     InputError
         If the suffix does not fit the audit.
     """
-    suffix = PurePath(name).suffix.lower()
     on_network = "edges" in audit.tables
-    if on_network and suffix == ".csv":
+    refuse_ending("-o", name, is_table=on_network)
+    if on_network:
         return csv_bytes(_edge_columns(audit))
-    if not on_network and suffix == ".vtu":
-        return vtu_bytes(audit.data, [*_given_fields(audit), *_cell_fields(audit)])
-    fitting = ".csv (a table)" if on_network else ".vtu (a mesh)"
-    message = f"-o {name}: the result of this audit must be written as {fitting}"
-    raise InputError(message)
+    return vtu_bytes(audit.data, [*_given_fields(audit), *_cell_fields(audit)])
 
 
 def result_notes(audit: Audit) -> tuple[str, ...]:
-    """What the file of `result_bytes` does not hold as the input had it, in words."""
+    """What to know of the file of `result_bytes`: what it does not hold as the input had it, what its values carry."""
     if "edges" in audit.tables:
-        return ()
+        if audit.holds is not False:
+            return ()
+        return ("the law does not hold: adjusted values carry a share of the errors found until these are mended",)
     notes = list(vtu_notes(audit.data, _given_fields(audit)))
     if audit.data.regions:
         notes.append(f"named groups have no place in VTU and were not written: {', '.join(audit.data.regions)}")
@@ -82,16 +100,23 @@ def vertex_bytes(audit: Audit) -> bytes:
         message = "--vertices: an audit of a mesh has no table of vertices; use -o FILE.vtu"
         raise InputError(message)
     table = audit.tables["vertices"]
-    kept = {name: column for name, column in table.items() if column.dtype == object or not np.isnan(column).all()}
-    return csv_bytes(kept)
+    return csv_bytes({name: column for name, column in table.items() if _has_entry(column)})
+
+
+def _has_entry(column: AnyArray) -> bool:
+    if column.dtype == object:
+        return any(value not in (None, "") for value in column.tolist())
+    return not np.isnan(column).all()
 
 
 def _edge_columns(audit: Audit) -> dict[str, AnyArray]:
     table = audit.tables["edges"]
     value = str(audit.asked["value"])
-    raw = audit.data.column(value, 1)
     columns: dict[str, AnyArray] = {key: table[key] for key in ("id", "from", "to")}
-    columns[value] = raw.cells if raw.cells.dtype == object and raw.decimal == "." else table["value"]
+    columns[value] = table["value"]
+    if audit.asked.get("readings") is None:  # else the edge table has no such column, or one that was not audited
+        raw = audit.data.column(value, 1)
+        columns[value] = raw.cells if raw.cells.dtype == object and raw.decimal == "." else table["value"]
     for key in ("sd", "adjusted", "adjusted_sd", "correction", "redundancy", "statistic", "detectable", "standing"):
         columns[key if key not in columns else f"audit_{key}"] = table[key]
     return columns

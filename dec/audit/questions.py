@@ -3,6 +3,7 @@
 from collections.abc import Iterable, Mapping
 from typing import Any
 
+from dec.audit.asked import ALPHA, Asked
 from dec.audit.network import audit_differences, audit_flows
 from dec.audit.record import Audit
 from dec.calculus.dataset import Dataset
@@ -14,7 +15,10 @@ __all__ = ["balance", "loops"]
 def balance(
     data: Dataset, value: str | None = None, sd: object = None, open: str | Iterable[Any] = (),
     supply: Any = None, *, field: str | None = None, at: str | None = None, alpha: float = 0.05,
-    limit: float | str | None = None, unit: str | None = None,
+    limit: float | str | None = None, unit: str | None = None, readings: Any = None, supply_sd: Any = None,
+    storage: Any = None, storage_sd: Any = None, common: str | None = None, common_sd: Any = None,
+    preset: str | None = None, transition: Any = None, sidak: bool = False, robust: bool = False,
+    figures: str = "auto", decimal: str = ".",
 ) -> Audit:  # fmt: skip
     """Do the flows add up? An audit of one network column, or of one mesh field.
 
@@ -30,8 +34,12 @@ def balance(
     open : str or iterable of ids
         Network: vertices that exchange an unknown amount with the outside; a plain text names a yes-or-no column.
     supply : None, str, mapping or array_like of shape (n0,)
-        Network: what is put in at vertices (taken out: negative), exactly known; a plain text names a node column.
-        A vertex whose supply is empty, or that a mapping leaves out, is taken as open, and a note says so.
+        Network: what is put in at vertices (taken out: negative); a plain text names a node column. A vertex whose
+        supply is empty, or that a mapping leaves out, is taken as open, and a note says so.
+    supply_sd : None, float, str or mapping
+        Network: how well supplies are known, as `sd` or by id; exactly where it is 0, empty or not given.
+    storage, storage_sd : as supply and supply_sd
+        Network: what is kept back at vertices in the time of the readings: counts as a supply with the other sign.
     field : str
         Mesh: the vector field whose flux is balanced.
     at : "vertices", "cells" or None
@@ -43,6 +51,27 @@ def balance(
         the integration rule's own estimated error.
     unit : str or None
         Echoed wherever the values are shown.
+    readings : None, path or DataFrame
+        Network: a table of readings, one row each: ``edge``, the column `value`, optionally ``sensor``, ``mounted``
+        (+1 or -1) and ``factor`` (0.001, 1/3.6). Several readings of one edge count as their weighted mean and check
+        each other.
+    common, common_sd : None, or str and float or str
+        Network: an edge column of groups whose readings share one error, and the standard deviation of that error, as
+        one number or a percentage of the reading.
+    preset : None or str
+        Network: a limit or an accuracy of a trade, by name; see `dec.preset` and `dec presets`. Never a default.
+    transition : None, float or str
+        Network: transitional flow of the meters, for presets of meter classes: a number or a column of the readings; a
+        text such as "1.6+0.02" or "Q2+0.02" adds a floor to every standard deviation, for readings of 0.
+    sidak : bool
+        Network: hold single tests against one limit for all of them together, at `alpha`.
+    robust : bool
+        Network: compare with the least sum of absolute corrections.
+    figures : "auto", "all" or "estimate"
+        Network too large for an exact factor: redundancies of the leading suspects only, of every edge at one solve
+        each, or of every edge by random projection with a stated error.
+    decimal : "." or ","
+        Decimal sign of the table of readings, where that is a file.
 
     Returns
     -------
@@ -72,19 +101,30 @@ def balance(
     (True, 1, [5.1, 5.1])
     """
     _refuse_mixed(data, value, field)
-    _refuse_unfit(field, at, sd=sd, open=None if isinstance(open, tuple | list) and not open else open, supply=supply)
+    _refuse_unfit(
+        field, at, sd=sd, open=None if isinstance(open, tuple | list) and not open else open, supply=supply,
+        readings=readings, supply_sd=supply_sd, storage=storage, storage_sd=storage_sd, common=common,
+        common_sd=common_sd, preset=preset, transition=transition, sidak=sidak or None, robust=robust or None,
+        figures=_unlike(figures, "auto"), alpha=_unlike(alpha, ALPHA),
+    )  # fmt: skip
     if field is not None:
-        from dec.audit.mesh import audit_flux
+        from dec.audit.meshes.questions import audit_flux
 
         return audit_flux(data, field, at, limit, unit)
     assert value is not None
-    return audit_flows(data, value, sd, open, supply, alpha, limit, unit)
+    return audit_flows(data, Asked(
+        value, sd, readings, open, supply, supply_sd, storage, storage_sd, common=common, common_sd=common_sd,
+        alpha=alpha, limit=limit, unit=unit, preset=preset, transition=transition, sidak=sidak, robust=robust,
+        figures=figures, decimal=decimal, law="balance",
+    ))  # fmt: skip
 
 
 def loops(
     data: Dataset, value: str | None = None, sd: object = None, fixed: str | Mapping[Any, Any] | None = None, *,
     field: str | None = None, at: str | None = None, alpha: float = 0.05, limit: float | str | None = None,
-    unit: str | None = None,
+    unit: str | None = None, readings: Any = None, fixed_sd: Any = None, common: str | None = None,
+    common_sd: Any = None, preset: str | None = None, length: str | None = None, length_unit: str | None = None,
+    transition: Any = None, sidak: bool = False, robust: bool = False, figures: str = "auto", decimal: str = ".",
 ) -> Audit:  # fmt: skip
     """Do the differences close? An audit of one network column, or of one mesh field.
 
@@ -98,6 +138,8 @@ def loops(
         As in `balance`.
     fixed : None, str or mapping of id to number
         Network: potentials that are held; a plain text names a node column, whose empty cells are not held.
+    fixed_sd : None, float, str or mapping
+        Network: how well they are known, as `sd` or by id; exactly where it is 0, empty or not given.
     field : str
         Mesh: the vector field whose circulation is taken.
     at : "vertices", "cells" or None
@@ -107,7 +149,29 @@ def loops(
     limit : None, float or str
         As in `balance`.
     unit : str or None
-        Echoed wherever the values are shown.
+        Echoed wherever the values are shown; presets of levelling need it.
+    readings : None, path or DataFrame
+        Network: a table of readings, one row each: ``edge``, the column `value`, optionally ``sensor``, ``mounted``
+        (+1 or -1) and ``factor`` (0.001, 1/3.6). Several readings of one edge count as their weighted mean and check
+        each other.
+    common, common_sd : None, or str and float or str
+        Network: an edge column of groups whose readings share one error, and the standard deviation of that error, as
+        one number or a percentage of the reading.
+    preset : None or str
+        Network: a limit or an accuracy of a trade, by name; see `dec.preset` and `dec presets`. Never a default.
+    length, length_unit : None or str
+        Network: edge column of lengths and its unit ("m", "km", "mi", "ft"), for presets of levelling.
+    transition : None, float or str
+        As in `balance`.
+    sidak : bool
+        Network: hold single tests against one limit for all of them together, at `alpha`.
+    robust : bool
+        Network: compare with the least sum of absolute corrections.
+    figures : "auto", "all" or "estimate"
+        Network too large for an exact factor: redundancies of the leading suspects only, of every edge at one solve
+        each, or of every edge by random projection with a stated error.
+    decimal : "." or ","
+        Decimal sign of the table of readings, where that is a file.
 
     Returns
     -------
@@ -130,13 +194,25 @@ def loops(
     (True, 0.03, 3.0)
     """
     _refuse_mixed(data, value, field)
-    _refuse_unfit(field, at, sd=sd, fixed=fixed)
+    _refuse_unfit(
+        field, at, sd=sd, fixed=fixed, readings=readings, fixed_sd=fixed_sd, common=common, common_sd=common_sd,
+        preset=preset, length=length, length_unit=length_unit, transition=transition, sidak=sidak or None,
+        robust=robust or None, figures=_unlike(figures, "auto"), alpha=_unlike(alpha, ALPHA),
+    )  # fmt: skip
     if field is not None:
-        from dec.audit.mesh import audit_circulation
+        from dec.audit.meshes.questions import audit_circulation
 
         return audit_circulation(data, field, at, limit, unit)
     assert value is not None
-    return audit_differences(data, value, sd, fixed, alpha, limit, unit)
+    return audit_differences(data, Asked(
+        value, sd, readings, fixed=fixed, fixed_sd=fixed_sd, common=common, common_sd=common_sd, alpha=alpha,
+        limit=limit, unit=unit, preset=preset, length=length, length_unit=length_unit, transition=transition,
+        sidak=sidak, robust=robust, figures=figures, decimal=decimal, law="loop",
+    ))  # fmt: skip
+
+
+def _unlike(given: object, usual: object) -> object:
+    return None if isinstance(given, int | float | str) and given == usual else given
 
 
 def _refuse_unfit(field: str | None, at: str | None, **network: object) -> None:
@@ -156,4 +232,8 @@ def _refuse_mixed(data: Dataset, value: str | None, field: str | None) -> None:
         raise InputError(message)
     if (value is None) == (field is None):
         message = "give either the column of a network (value) or the field of a mesh (field)"
+        raise InputError(message)
+    if value is not None and data.complex.dim > 1 and value not in data.columns.get(1, {}):
+        fields = ", ".join(data.fields) or "none here"
+        message = f"value {value!r} names an edge column, and this is a mesh; give field (--field) instead ({fields})"
         raise InputError(message)

@@ -1,23 +1,63 @@
 """What was measured, where, how well, and what is known beside it: the model that both laws read."""
 
 import difflib
-import re
 from collections.abc import Hashable, Iterable, Mapping
 from dataclasses import dataclass
 from decimal import Decimal
 
 import numpy as np
 
-from dec.arrays import BoolArray, FloatArray, IntArray, float_array
+from dec.arrays import BoolArray, FloatArray, IntArray, ObjectArray, float_array
+from dec.audit.deviations import Rows, deviations, refuse_huge
+from dec.audit.exactly import as_floats, common_unit
 from dec.calculus.columns import Column, Decimals, reads_as_number
-from dec.calculus.dataset import Dataset
+from dec.calculus.dataset import Dataset, Input
 from dec.errors import InputError
 
-__all__ = ["Known", "Readings", "known_at_vertices", "named_vertices", "read_readings"]
+__all__ = ["Known", "Readings", "Repeats", "known_at_vertices", "named_vertices", "read_readings", "with_storage"]
 
-_PERCENT = re.compile(r"\s*([^%+]*?)\s*%\s*(?:\+\s*([^%]*?)\s*)?")
-# Squares of what lies between, and sums of many of them, stay inside float64.
-_SMALLEST, _LARGEST = 1e-100, 1e100
+
+@dataclass(frozen=True, slots=True)
+class Repeats:
+    """The rows of a table of readings, as they were applied; m rows hold a reading.
+
+    Attributes
+    ----------
+    edge : int64 array, shape (m,)
+        Number of the edge that each row reads.
+    sensor : object array of str, shape (m,)
+        Empty where the table names none.
+    raw : float64 array, shape (m,)
+        As the sensor shows it, in its own unit.
+    mounted : int64 array, shape (m,)
+        +1 along the edge, -1 against it.
+    factor : float64 array, shape (m,)
+        Takes the sensor's unit to that of the edge.
+    value : float64 array, shape (m,)
+        raw * mounted * factor, in the unit and the direction of the edge.
+    sd : float64 array, shape (m,), or None
+        In the unit of the edge.
+    dof : int
+        Independent checks among readings of one edge: one for each reading beyond the first.
+    chi_square : float
+        Sum over rows of (value - mean of its edge)^2 / sd^2.
+    input : Input or None
+        The file, with its hash; None for a frame from memory.
+    notes : tuple of str
+        What the reader of the file wants known.
+    """
+
+    edge: IntArray
+    sensor: ObjectArray
+    raw: FloatArray
+    mounted: IntArray
+    factor: FloatArray
+    value: FloatArray
+    sd: FloatArray | None
+    dof: int
+    chi_square: float
+    input: Input | None
+    notes: tuple[str, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -31,15 +71,18 @@ class Readings:
     sd : float64 array, shape (n1,), or None
         Standard deviations in the unit of the values; None where none were given.
     decimals : Decimals
-        The readings exactly as written.
+        The readings exactly as written; the mean of several readings of one edge is rounded to the nearest float.
     sd_said : str or None
         How the standard deviations were given, for the record.
+    repeats : Repeats or None
+        The rows behind the readings, where they came from a table of their own.
     """
 
     value: FloatArray
     sd: FloatArray | None
     decimals: Decimals
     sd_said: str | None
+    repeats: Repeats | None = None
 
     @property
     def measured(self) -> BoolArray:
@@ -49,7 +92,7 @@ class Readings:
 
 @dataclass(frozen=True, slots=True)
 class Known:
-    """Numbers known exactly at some vertices: supplies, or fixed potentials.
+    """Numbers known at some vertices, exactly or as measured: supplies, or fixed potentials.
 
     Attributes
     ----------
@@ -57,10 +100,17 @@ class Known:
         0 where nothing is known.
     decimals : Decimals
         The same exactly; ``present`` says where something is known.
+    sd : float64 array, shape (n0,), or None
+        Standard deviations in the unit of the numbers: positive where a number was measured, 0 where it is exact and
+        where nothing is known; None where all are exact.
+    sd_said : str or None
+        How the standard deviations were given, for the record.
     """
 
     value: FloatArray
     decimals: Decimals
+    sd: FloatArray | None = None
+    sd_said: str | None = None
 
 
 def read_readings(net: Dataset, value: str, sd: object) -> Readings:
@@ -73,8 +123,8 @@ def read_readings(net: Dataset, value: str, sd: object) -> Readings:
         Name of an edge column.
     sd : None, float, str or array_like
         A number for all; a text that reads as a number, as a percentage of the reading ("2%", or "2%+0.1" for 2 %
-        of the reading plus 0.1), or else as the name of an edge column ("col:5" forces a column); or one number an
-        edge.
+        of the reading plus 0.1), or else as the name of an edge column ("col:5" forces a column); one number an
+        edge; or a `meter_class` of a preset.
 
     Raises
     ------
@@ -84,9 +134,12 @@ def read_readings(net: Dataset, value: str, sd: object) -> Readings:
     """
     column = net.column(value, 1)
     numbers, decimals = column.numbers(), column.decimals()
-    _refuse_huge(column, numbers)
-    deviations, said = _deviations(net, column, numbers, decimals.present, sd)
-    return Readings(numbers, deviations, decimals, said)
+    refuse_huge(column, numbers)
+    if sd is None:
+        return Readings(numbers, None, decimals, None)
+    edges = net.columns.get(1, {})
+    found = deviations(Rows(column, numbers, decimals.present, edges, lambda name: net.column(name, 1)), sd)
+    return Readings(numbers, found.sd, decimals, found.said)
 
 
 def named_vertices(net: Dataset, names: str | Iterable[object] | None, what: str) -> IntArray:
@@ -111,37 +164,126 @@ def named_vertices(net: Dataset, names: str | Iterable[object] | None, what: str
     return np.unique(_numbers_of(net, list(names), what))
 
 
-def known_at_vertices(net: Dataset, given: object, what: str) -> Known:
+def known_at_vertices(net: Dataset, given: object, what: str, sd: object = None) -> Known:
     """Numbers known at vertices, from a node column, a mapping of ids, or one number a vertex.
 
     An empty cell is not known, which is not the same as zero.
 
+    Parameters
+    ----------
+    net : Dataset
+    given : str, mapping of id to number, or array_like of shape (n0,)
+    what : str
+        What the caller calls the numbers: "supply", "fixed".
+    sd : None, float, str, mapping of id to number, or array_like of shape (n0,)
+        Standard deviations: one number for all that are known; a text that reads as a number, as a percentage of the
+        number ("2%", "2%+0.1"), or else as the name of a node column ("col:5" forces a column); or some vertices by
+        id. 0, an empty cell and a vertex that a mapping leaves out are exact, and so is a share of 0.
+
+    Returns
+    -------
+    Known
+
     Raises
     ------
     InputError
-        If the column is missing, an id is not known or given twice, or a number is not finite or beyond 1e100.
+        If the column is missing, an id is not known or given twice, a number is not finite or beyond 1e100, a standard
+        deviation is negative, or one is given by id where no number is known.
     """
+    column = _vertex_column(net, given, what)
+    amounts, decimals = column.numbers(), column.decimals()
+    refuse_huge(column, amounts)
+    value = np.nan_to_num(amounts)
+    if sd is None:
+        return Known(value, decimals)
+    name, said = f"{what}_sd (--{what}-sd)", None
+    if isinstance(sd, Mapping):
+        sd, said = _sd_by_id(net, sd, name, what, decimals), "by id"
+    rows = Rows(
+        column, value, decimals.present, net.columns.get(0, {}), lambda name: net.column(name, 0), one="a vertex",
+        where=f"where {what} is known", kind="a node column", name=name, zero_is_exact=True,
+    )  # fmt: skip
+    found = deviations(rows, sd)
+    return Known(value, decimals, np.where(decimals.present, found.sd, 0.0), said or found.said)
+
+
+def with_storage(supply: Known | None, storage: Known) -> Known:
+    """What is put in at vertices once the rise of their stock is taken out: supply minus storage, exactly.
+
+    Parameters
+    ----------
+    supply : Known or None
+        What is put in; None where nothing is put in anywhere, which is then known of every vertex.
+    storage : Known
+        Rise of the stock of each vertex over the interval, as a flow in the unit of the supply; a fall is negative.
+        Where nothing is known there is no stock.
+
+    Returns
+    -------
+    Known
+        Known where the supply is: what is not known stays so, whatever is stored. Variances are added.
+
+    Examples
+    --------
+    >>> import pandas as pd
+    >>> net = Dataset.from_frames(pd.DataFrame({"from": ["T"], "to": ["J"]}))
+    >>> supply = known_at_vertices(net, {"T": "5.2", "J": "-4.1"}, "supply", sd={"T": 0.3})
+    >>> left = with_storage(supply, known_at_vertices(net, {"T": "1.15"}, "storage", sd=0.4))
+    >>> left.value, left.sd
+    (array([ 4.05, -4.1 ]), array([0.5, 0. ]))
+    """
+    n = len(storage.value)
+    if supply is None:
+        supply = Known(np.zeros(n), Decimals(np.zeros(n, dtype=np.int64), 0, np.ones(n, dtype=bool)))
+    present = supply.decimals.present
+    (put_in, risen), places = common_unit(supply.decimals, storage.decimals)
+    left = np.where(present, put_in - risen, 0)
+    decimals = Decimals(left, places, present)
+    said = "; ".join(
+        f"{word}: {known.sd_said}" for word, known in (("supply", supply), ("storage", storage)) if known.sd_said
+    )
+    if supply.sd is None and storage.sd is None:
+        return Known(as_floats(left, places), decimals)
+    nothing = np.zeros(n)
+    sd = np.hypot(nothing if supply.sd is None else supply.sd, nothing if storage.sd is None else storage.sd)
+    return Known(as_floats(left, places), decimals, np.where(present, sd, 0.0), said or None)
+
+
+def _vertex_column(net: Dataset, given: object, what: str) -> Column:
     n = net.complex.counts[0]
     if isinstance(given, str):
-        column = net.column(given, 0)
-    elif isinstance(given, Mapping):
-        numbers = _numbers_of(net, list(given), what)
-        cells = np.full(n, "", dtype=object)
-        for number, (name, amount) in zip(numbers.tolist(), given.items(), strict=True):
-            if cells[number]:
-                message = f"{what} names {name!r} twice; give every vertex one number"
-                raise InputError(message)
-            cells[number] = _as_written(amount, f"{what} of {name!r}")
-        column = Column(what, cells, what)
-    else:
-        values = float_array(given, what, finite=False)  # type: ignore[arg-type]
-        if values.shape != (n,):
-            message = f"{what} must give {n} numbers, one a vertex, got shape {values.shape}"
+        return net.column(given, 0)
+    if isinstance(given, Mapping):
+        return Column(what, _cells_by_id(net, given, what), what)
+    values = float_array(given, what, finite=False)  # type: ignore[arg-type]
+    if values.shape != (n,):
+        message = f"{what} must give {n} numbers, one a vertex, got shape {values.shape}"
+        raise InputError(message)
+    return Column(what, values, what)
+
+
+def _cells_by_id(net: Dataset, given: Mapping[object, object], what: str) -> ObjectArray:
+    """Return one text a vertex, empty where the mapping says nothing."""
+    numbers = _numbers_of(net, list(given), what)
+    cells = np.full(net.complex.counts[0], "", dtype=object)
+    for number, (name, amount) in zip(numbers.tolist(), given.items(), strict=True):
+        if cells[number]:
+            message = f"{what} names {name!r} twice; give every vertex one number"
             raise InputError(message)
-        column = Column(what, values, what)
-    amounts = column.numbers()
-    _refuse_huge(column, amounts)
-    return Known(np.nan_to_num(amounts), column.decimals())
+        cells[number] = _as_written(amount, f"{what} of {name!r}")
+    return cells
+
+
+def _sd_by_id(net: Dataset, sd: Mapping[object, object], name: str, what: str, decimals: Decimals) -> FloatArray:
+    cells = _cells_by_id(net, sd, name)
+    given = cells != ""
+    idle = np.flatnonzero(given & ~decimals.present)
+    if len(idle):
+        ids = net.complex.vertex_ids
+        vertex = int(idle[0]) if ids is None else ids[idle[0]]
+        message = f"{name} names {vertex!r}, where no {what} is known; give the number too, or leave its sd out"
+        raise InputError(message)
+    return np.where(given, Column(name, cells, name).numbers(), 0.0)
 
 
 def _as_written(amount: object, what: str) -> str:
@@ -170,87 +312,3 @@ def _numbers_of(net: Dataset, names: list[object], what: str) -> IntArray:
             raise InputError(message)
         found.append(number[key])
     return np.array(found, dtype=np.int64)
-
-
-def _refuse_huge(column: Column, numbers: FloatArray) -> None:
-    huge = np.abs(numbers) > _LARGEST
-    if huge.any():
-        row = int(np.argmax(huge))
-        message = (
-            f"{column.place(row)}: {column.name} must lie within {_LARGEST:g}, got {numbers[row]:g}; "
-            "choose a unit that fits"
-        )
-        raise InputError(message)
-
-
-def _deviations(
-    net: Dataset, column: Column, value: FloatArray, measured: BoolArray, sd: object
-) -> tuple[FloatArray | None, str | None]:
-    if sd is None:
-        return None, None
-    if isinstance(sd, str):
-        return _deviations_from_text(net, column, value, measured, sd)
-    if not isinstance(sd, Mapping) and np.ndim(sd) == 1:  # type: ignore[arg-type]
-        array = float_array(sd, "sd", finite=False)  # type: ignore[arg-type]
-        if len(array) != len(value):
-            message = f"sd must give {len(value)} numbers, one an edge, got {len(array)}"
-            raise InputError(message)
-        _refuse_not_positive(array, measured, column, "give every measured edge one")
-        return array, "one an edge"
-    number = float(float_array(sd, "sd", ndim=0, finite=False))  # type: ignore[arg-type]
-    return _constant(number, column, value)
-
-
-def _deviations_from_text(
-    net: Dataset, column: Column, value: FloatArray, measured: BoolArray, sd: str
-) -> tuple[FloatArray, str]:
-    name = sd.removeprefix("col:")
-    if name == sd and reads_as_number(sd):
-        return _constant(float(sd), column, value)
-    percent = _percentage(sd) if name == sd else None
-    if percent:
-        share, floor = percent
-        array = np.abs(value) * (share / 100.0) + floor
-        _refuse_not_positive(array, measured, column, f"add a floor to the percentage, as in {share:g}%+0.1")
-        return array, f"{share:g} % of the reading" + (f" plus {floor:g}" if floor else "")
-    if name == sd and name not in net.columns.get(1, {}):
-        columns = ", ".join(net.columns.get(1, {})) or "none"
-        message = f"sd must be a number, a percentage (2%, or 2%+0.1) or an edge column ({columns}), got {sd!r}"
-        raise InputError(message)
-    source = net.column(name, 1)
-    array = source.numbers()
-    _refuse_not_positive(array, measured, source, "leave the reading empty if the edge is not measured")
-    return np.asarray(array), f"column {name}"
-
-
-def _percentage(text: str) -> tuple[float, float] | None:
-    """Return share and floor of a text such as 2%+0.1, or None where it is something else."""
-    parts = _PERCENT.fullmatch(text)
-    if parts is None or not all(reads_as_number(part) for part in parts.groups("0")):
-        return None
-    share, floor = (float(part) for part in parts.groups("0"))
-    return (share, floor) if 0 <= share <= _LARGEST and 0 <= floor <= _LARGEST else None
-
-
-def _constant(number: float, column: Column, value: FloatArray) -> tuple[FloatArray, str]:
-    if not _SMALLEST <= number <= _LARGEST:
-        message = (
-            f"sd must be positive{_within(number)}, got {number:g}; leave it out to check the decimals of "
-            f"{column.name!r} exactly"
-        )
-        raise InputError(message)
-    return np.full(len(value), number), f"{number:g} for every reading"
-
-
-def _refuse_not_positive(array: FloatArray, measured: BoolArray, column: Column, way_out: str) -> None:
-    bad = measured & ~((array >= _SMALLEST) & (array <= _LARGEST))
-    if bad.any():
-        row = int(np.argmax(bad))
-        found = "nothing" if np.isnan(array[row]) else f"{array[row]:g}"
-        must = f"sd must be positive{_within(float(array[row]))} where the edge is measured"
-        message = f"{column.place(row)}: {must}, got {found}; {way_out}"
-        raise InputError(message)
-
-
-def _within(number: float) -> str:
-    return f" and lie within {_SMALLEST:g} and {_LARGEST:g}" if number > 0 else ""

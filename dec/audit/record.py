@@ -1,14 +1,14 @@
 """The record of an audit: what was asked, what was found, and what was not shown."""
 
 import json
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from html import escape
 from typing import TYPE_CHECKING, Any
 
-import numpy as np
-
 from dec.arrays import AnyArray
+from dec.audit.rows import Rows, largest_coordinate, plain, shown_rows, standing_counts
+from dec.audit.what_if import WhatIf
 from dec.calculus.cochain import Cochain
 from dec.calculus.dataset import Dataset, Input
 from dec.errors import InputError
@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 __all__ = ["Audit", "Suspect"]
 
 SCHEMA = "dec.audit/1"
-_TABLES = ("edges", "vertices", "faces", "cells", "boundaries", "holes")
+_TABLES = ("edges", "vertices", "at_vertices", "readings", "faces", "cells", "boundaries", "holes")
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,7 +29,7 @@ class Suspect:
     Attributes
     ----------
     kind : str
-        "edge" or "vertex".
+        "edge", "vertex", "reading" (one of several of an edge), or "supply" or "potential" (a reading at a vertex).
     id : str
     statistic : float
         Size of its correction in its own standard deviations.
@@ -39,6 +39,10 @@ class Suspect:
         What no reading can tell apart from it.
     hint : str or None
         What would explain it.
+    sd : float or None
+        Standard deviation of the difference between a reading and the estimate, or of an estimated error.
+    outcomes : mapping
+        The global test as it would be: "left_out", and "turned" or "scaled" where the hint says so.
     """
 
     kind: str
@@ -47,6 +51,8 @@ class Suspect:
     estimate: float
     inseparable_from: tuple[tuple[str, str], ...] = ()
     hint: str | None = None
+    sd: float | None = None
+    outcomes: Mapping[str, Mapping[str, object]] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, eq=False)
@@ -77,6 +83,8 @@ class Audit:
     method : str
     adjusted : Cochain or None
         Best consistent values; nan where a value does not follow.
+    again : function of a WhatIf, or None
+        Audits a network anew with other readings.
     extra : mapping
         Figures beside the common ones; ``closes_to`` on a network: the largest amount by which adjusted values miss the
         law, over the largest value.
@@ -99,6 +107,44 @@ class Audit:
     method: str = ""
     adjusted: Cochain | None = None
     extra: Mapping[str, Any] = field(default_factory=dict)
+    again: "Callable[[WhatIf], Audit] | None" = field(default=None, repr=False)
+
+    def what_if(
+        self, turned: Iterable[str] = (), scaled: Mapping[str, Any] | None = None, left_out: Iterable[str] = ()
+    ) -> "Audit":
+        """The audit as it would be with other readings; the data stay as they are.
+
+        Parameters
+        ----------
+        turned : iterable of str
+            Ids of edges whose readings count the other way.
+        scaled : mapping of id to number or text
+            What readings are multiplied by, exactly, "1/3.6" too; a product without end is rounded at its 20th digit.
+        left_out : iterable of str
+            Ids of edges taken as not measured.
+
+        Returns
+        -------
+        Audit
+
+        Raises
+        ------
+        InputError
+            If an id is no measured edge, a factor no number, or the audit is one of a mesh.
+
+        Examples
+        --------
+        >>> import pandas as pd
+        >>> from dec import Dataset, balance
+        >>> rows = {"id": ["in", "out"], "from": ["S", "J"], "to": ["J", "T"], "flow": ["5.0", "-5.0"]}
+        >>> audit = balance(Dataset.from_frames(pd.DataFrame(rows)), value="flow", sd=0.1, open=("S", "T"))
+        >>> audit.holds, audit.what_if(turned=["out"]).holds
+        (False, True)
+        """
+        if self.again is None:
+            message = "what-if questions are asked of an audit of a network column, not of a mesh field"
+            raise InputError(message)
+        return self.again(WhatIf.of(turned, scaled, left_out))
 
     @property
     def inputs(self) -> tuple[Input, ...]:
@@ -128,8 +174,37 @@ class Audit:
             raise InputError(message)
         return self._frame(name)
 
-    def to_dict(self) -> dict[str, Any]:
-        """The audit as plain Python objects, keys as in the JSON; nan becomes None."""
+    def to_dict(self, *, rows: int | None = None) -> dict[str, Any]:
+        """The audit as plain Python objects, keys as in the JSON; nan becomes None.
+
+        Parameters
+        ----------
+        rows : int or None
+            Rows of each table that are wanted; None for all. Vertices and loops then come worst first, edges with
+            suspects first, and one more key, "shown", says of how many they are and counts the edges by standing.
+        """
+        entries = self._entries(self.tables if rows is None else {}, self.loops if rows is None else self.loops[:rows])
+        found = {key: value.objects() if isinstance(value, Rows) else value for key, value in entries.items()}
+        return found if rows is None else found | self._cut(rows)
+
+    def _cut(self, count: int) -> dict[str, Any]:
+        """Return the tables cut to what a view shows, with the true counts."""
+        found: dict[str, Any] = {}
+        of, standing = {"loops": len(self.loops)}, None
+        named = {suspect.id for suspect in self.suspects}
+        named |= {entry["id"] for entry in (self.extra.get("errors") or {}).get("found", ())}
+        for name, columns in self.tables.items():
+            cut, of[name] = shown_rows(name, columns, named, count)
+            found[name] = cut.objects()
+            if name == "edges":
+                standing = standing_counts(columns["standing"], columns["id"], count)
+        largest = largest_coordinate(self.tables)
+        return {**found, "shown": {"of": of, "standing": standing, "largest_coordinate": largest}}
+
+    def _entries(
+        self, tables: Mapping[str, Mapping[str, AnyArray]], loops: Sequence[Mapping[str, Any]]
+    ) -> dict[str, Any]:
+        """Return what the JSON holds, by key and in order; tables are still columns."""
         network = {"edges", "vertices"} <= set(self.tables)
         result: dict[str, Any] = {
             "schema": SCHEMA,
@@ -138,26 +213,26 @@ class Audit:
             "inputs": [{"name": i.name, "sha256": i.sha256, "bytes": i.bytes} for i in self.inputs],
             "counts": dict(self.counts),
             "dof": self.dof,
-            "chi_square": _plain(self.chi_square),
-            "limit": _plain(self.limit),
-            "p_value": _plain(self.p_value),
+            "chi_square": plain(self.chi_square),
+            "limit": plain(self.limit),
+            "p_value": plain(self.p_value),
         }
-        for name, columns in self.tables.items():
-            result[name] = _rows(columns)
+        result.update({name: Rows(columns) for name, columns in tables.items()})
         if not network:
             for name in ("cells" if self.data.complex.dim == 3 else "faces", "boundaries", "holes"):
                 result.setdefault(name, None)
         if network:
-            result["loops"] = [{key: _plain(value) for key, value in loop.items()} for loop in self.loops]
+            result["loops"] = [{key: plain(value) for key, value in loop.items()} for loop in loops]
         result["suspects"] = [
             {
-                "kind": s.kind, "id": s.id, "statistic": _plain(s.statistic), "estimate": _plain(s.estimate),
+                "kind": s.kind, "id": s.id, "statistic": plain(s.statistic), "estimate": plain(s.estimate),
                 "inseparable_from": [{"kind": kind, "id": name} for kind, name in s.inseparable_from], "hint": s.hint,
+                "sd": plain(s.sd), "outcomes": plain(s.outcomes),
             }
             for s in self.suspects
         ]  # fmt: skip
-        result.update({key: _plain(value) for key, value in self.extra.items()})
-        result["asked"] = {key: _plain(value) for key, value in self.asked.items()}
+        result.update({key: plain(value) for key, value in self.extra.items()})
+        result["asked"] = {key: plain(value) for key, value in self.asked.items()}
         result["method"] = self.method
         result["notes"] = list(self.notes)
         result["not_shown"] = list(self.not_shown)
@@ -171,7 +246,13 @@ class Audit:
         indent : int or None
             Spaces a level; None for one line.
         """
-        return json.dumps(self.to_dict(), indent=indent, ensure_ascii=False, allow_nan=False)
+        if indent is not None:
+            return json.dumps(self.to_dict(), indent=indent, ensure_ascii=False, allow_nan=False)
+        texts = (
+            f"{_dumped(key)}: {value.json() if isinstance(value, Rows) else _dumped(value)}"
+            for key, value in self._entries(self.tables, self.loops).items()
+        )
+        return f"{{{', '.join(texts)}}}"
 
     def __repr__(self) -> str:
         open_end = "not decided" if self.dof else "nothing can be checked"
@@ -195,34 +276,5 @@ class Audit:
         return pd.DataFrame(dict(self.tables.get(name, {})))
 
 
-def _rows(columns: Mapping[str, AnyArray]) -> list[dict[str, Any]]:
-    names = list(columns)
-    lists = [_listed(columns[name]) for name in names]
-    return [dict(zip(names, row, strict=True)) for row in zip(*lists, strict=True)]
-
-
-def _listed(column: AnyArray) -> list[Any]:
-    """Return a column as JSON has it."""
-    array = np.asarray(column)
-    plain = array.astype(object)
-    if array.dtype.kind == "f":
-        plain[~np.isfinite(array)] = None
-    listed: list[Any] = plain.tolist()
-    return [_plain(value) for value in listed] if array.dtype == object else listed
-
-
-def _plain(value: Any) -> Any:
-    """Return the value as JSON has it: nan and infinity as None, NumPy scalars as Python's."""
-    if isinstance(value, str):
-        return value
-    if isinstance(value, np.generic):
-        value = value.item()
-    if isinstance(value, float):
-        return value if np.isfinite(value) else None
-    if isinstance(value, tuple | list):
-        return [_plain(item) for item in value]
-    if isinstance(value, Mapping):
-        return {str(key): _plain(item) for key, item in value.items()}
-    if isinstance(value, np.ndarray):
-        return [_plain(item) for item in value.tolist()]
-    return value
+def _dumped(value: Any) -> str:
+    return json.dumps(value, ensure_ascii=False, allow_nan=False)

@@ -4,13 +4,57 @@ import numpy as np
 
 from dec.arrays import BoolArray, IntArray
 from dec.audit.adjustment import Adjustment
+from dec.audit.asked import Asked
+from dec.audit.common_errors import CommonErrors
+from dec.audit.deviations import percentage
+from dec.audit.evidence import LOUDEST_PLACES, Evidence
 from dec.audit.flows import MOST_SPREAD_WORK
-from dec.audit.laplacian import LARGEST_FOR_ALL
-from dec.audit.names import counted, edge_names, few, vertex_names
+from dec.audit.model import Model
+from dec.audit.names import NAMED, counted, edge_names, few, vertex_names
 from dec.audit.readings import Readings
+from dec.audit.single_errors import LEADING
+from dec.audit.testing import Tested
 from dec.calculus.complex import Complex
+from dec.report.wording import number
 
-__all__ = ["datum_notes", "general_notes", "not_shown", "self_loop_notes", "supply_notes"]
+__all__ = [
+    "common_note", "datum_notes", "difference_notes", "general_notes", "limit_note", "not_shown", "self_loop_notes",
+    "supply_notes",
+]  # fmt: skip
+
+
+def common_note(found: CommonErrors, readings: Readings) -> str:
+    """A note on the errors that readings share: how many readings, which groups, and the size."""
+    moved = np.diff(found.moves.indptr) > 0
+    number = int(moved.sum()) if readings.repeats is None else int(moved[readings.repeats.edge].sum())
+    said = counted(number, "reading", "readings")
+    groups = f"{counted(len(found.names), 'group', 'groups')} ({few(found.names)})"
+    return f"{said} in {groups} share one error a group beside their own: {found.said}"
+
+
+def difference_notes(asked: Asked, levelled: bool) -> list[str]:
+    """Notes on the units that a levelling preset went by, and on standard deviations that are shares of differences."""
+    notes = []
+    if levelled:
+        notes.append(f"differences taken as {asked.unit}, lengths as {asked.length_unit}")
+    if isinstance(asked.sd, str) and percentage(asked.sd) is not None:
+        notes.append(
+            "standard deviations are a share of each difference; a share of a height difference is seldom its accuracy"
+        )
+    return notes
+
+
+def limit_note(one: str) -> str:
+    """A note that a limit names no suspect.
+
+    Parameters
+    ----------
+    one : str
+        What is held against the limit, a vertex or a loop.
+    """
+    return (
+        f"a limit names no suspect: it says which {one} is out, not which reading; for that, give standard deviations"
+    )
 
 
 def supply_notes(network: Complex, guessed: IntArray) -> list[str]:
@@ -53,43 +97,86 @@ def datum_notes(network: Complex, fixed: BoolArray, reached: IntArray) -> list[s
     return [f"{which}: only differences inside count there, measured from {names}, taken as 0"]
 
 
-def general_notes(network: Complex, readings: Readings, adjustment: Adjustment) -> list[str]:
+def general_notes(network: Complex, model: Model, adjustment: Adjustment, tests: Tested) -> list[str]:
     """Notes that both laws share: what is unchecked or unknown, and what was left out."""
     notes = []
-    if readings.sd is None:
+    if model.readings.sd is None and model.relative is not None:
+        notes.append("the adjusted values weigh every line by the inverse of its length")
+    elif model.readings.sd is None:
         notes.append("no standard deviations given: the adjusted values give every reading the same weight")
     elif adjustment.adjusted_sd is not None and (
         np.isnan(adjustment.adjusted_sd) & (adjustment.standing == "inferred")
     ).any():  # fmt: skip
         notes.append(f"standard deviations of inferred values are left out: more than {MOST_SPREAD_WORK:,} steps")
-    if adjustment.redundancy is None:
-        notes.append(
-            f"more than {LARGEST_FOR_ALL} unknowns: redundancies, tests of single edges and suspects are left out"
-        )
-    for word, says in (
-        ("unchecked", "measured, but nothing can contradict them"),
-        ("unknown", "not measured, and their values do not follow from the others"),
-    ):
-        edges = np.flatnonzero(adjustment.standing == word)
+    if model.readings.sd is not None and not tests.is_all:
+        notes += _left_out_notes(tests, adjustment.evidence)
+    for word, of_one, of_many in (
+        ("unchecked", "measured, but nothing can contradict it", "measured, but nothing can contradict them"),
+        ("unknown", "not measured, and its value does not follow from the others",
+         "not measured, and their values do not follow from the others"),
+    ):  # fmt: skip
+        edges = np.flatnonzero(adjustment.standing[: network.counts[1]] == word)
         if len(edges):
-            names = few(edge_names(network, edges))
+            names, says = few(edge_names(network, edges[: NAMED + 1])), of_one if len(edges) == 1 else of_many
             notes.append(f"{counted(len(edges), 'edge', 'edges')} {word}: {says} ({names})")
     return notes
 
 
-def not_shown(readings: Readings, adjustment: Adjustment, *, balance: bool) -> tuple[str, ...]:
+def _left_out_notes(tests: Tested, evidence: Evidence) -> list[str]:
+    """Notes on single tests that were not made, or estimated."""
+    if evidence.diagonal is not None and not tests.relative_error:
+        hidden = evidence.testable & np.isnan(evidence.diagonal)
+        edges, places = int(hidden[: evidence.n_edges].sum()), int(hidden[evidence.n_edges :].sum())
+        notes = []
+        if edges:
+            which = counted(edges, "reading", "readings")
+            notes.append(f"redundancies and tests of {which} are left out: standard deviations lie too far apart there")
+        if places:
+            loud = f"the {LOUDEST_PLACES} loudest held values are tested"
+            notes.append(f"{loud}; tests of {places} more are left out, each would take a solve")
+        return notes
+    if tests.relative_error:
+        says = (
+            f"redundancies and tests of single edges are estimated by random projection, with a standard error of "
+            f"{tests.relative_error:.0%}; the suspects' are exact"
+        )
+    else:
+        says = (
+            f"redundancies are left out, and single tests are exact for the {LEADING} readings with the largest "
+            "corrections alone; --figures estimate or all gives them for every edge"
+        )
+    return [f"the network is too large for an exact factor: {says}"]
+
+
+def not_shown(
+    model: Model, adjustment: Adjustment, tests: Tested, *, balance: bool, unit: str | None = None
+) -> tuple[str, ...]:
     """What the audit does not show, in sentences."""
     what = "balance" if balance else "loop"
-    texts = [f"errors that cancel in every {what}, and errors smaller than the detectable size of each edge"]
-    if (adjustment.standing == "unchecked").any():
+    texts = [f"errors that cancel in every {what}"]
+    own = tests.detectable[: model.n_edges]
+    if np.isfinite(own).any():
+        middle, largest = (_size(float(found), unit) for found in (np.nanmedian(own), np.nanmax(own)))
+        sizes = middle if middle == largest else f"median {middle}, largest {largest}"
+        texts[0] += f", and errors smaller than the detectable size of each edge ({sizes})"
+    if (adjustment.standing[: model.n_edges] == "unchecked").any():
         texts.append("errors of unchecked edges, however large")
-    if not readings.measured.all():
+    if not model.measured[: model.n_edges].all():
         texts.append("anything on edges that are not measured beyond what follows from the others")
     if balance:
+        places = tests.detectable[len(model.tail) :]
+        if np.isfinite(places).any():
+            least, largest = (_size(float(found), unit) for found in (np.nanmin(places), np.nanmax(places)))
+            sizes = least if least == largest else f"{least} to {largest}"
+            texts.append(f"leaks below the detectable size at their vertex, {sizes}")
         texts.append(
-            "safety: figures that balance are no evidence that there is no leak, that a space may be entered or that "
+            "safety: figures that balance are no evidence that there is no leak, that a space is safe to enter or that "
             "an alarm may be muted; local codes and licensed practice decide"
         )
     else:
         texts.append("a shift common to all fixed values; local codes and licensed practice decide what is accepted")
     return tuple(texts)
+
+
+def _size(size: float, unit: str | None) -> str:
+    return f"{number(size, 3)} {unit}" if unit else number(size, 3)

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any, NoReturn
 import numpy as np
 
 from dec.arrays import AnyArray, BoolArray, FloatArray, IntArray, ObjectArray, frozen
+from dec.calculus.numerals import plain_decimals
 from dec.errors import InputError
 
 if TYPE_CHECKING:
@@ -22,6 +23,7 @@ _EITHER_SIGN = re.compile(r"\s*[+-]?[.,]?[0-9][0-9.,]*([eE][+-]?[0-9]+)?\s*")
 _YES = frozenset({"1", "yes", "true", "y", "x"})
 _NO = frozenset({"0", "no", "false", "n", ""})
 _LARGEST_PLACES = 400  # 5e-324 needs 324
+_LARGEST_INTEGER, _LARGEST_POWER = 2**62, 18
 _SHOWN = 40
 _WAY_OUT = "leave the cell empty if nothing was measured"
 
@@ -86,7 +88,7 @@ class Column:
     def present(self) -> BoolArray:
         """True where the cell holds something; bool array of shape (n,)."""
         if self.cells.dtype == object:
-            return np.array([bool(cell) for cell in self.cells], dtype=bool)
+            return np.asarray(self.cells.astype(bool), dtype=bool)
         return ~np.isnan(self.cells.astype(np.float64))
 
     def numbers(self) -> FloatArray:
@@ -105,9 +107,12 @@ class Column:
         if self.cells.dtype != object:
             values = self.cells.astype(np.float64)
         else:
-            present = self.present()
-            values = np.full(len(self.cells), np.nan)
-            values[present] = np.fromiter(map(float, self._texts(present)), np.float64)
+            plain = plain_decimals(self.cells, self.decimal)
+            quick = plain.is_exact
+            values = np.where(quick, plain.floats, np.nan)
+            slow = self.present() & ~quick
+            if slow.any():
+                values[slow] = np.fromiter(map(float, self._texts(slow)), np.float64)
         if np.isinf(values).any():
             row = int(np.flatnonzero(np.isinf(values))[0])
             message = f"{self.place(row)}: {self.name} must be finite, got {_shown(self.cells[row])}; {_WAY_OUT}"
@@ -129,25 +134,39 @@ class Column:
         InputError
             As for `numbers`, or if a cell has more than 400 decimal places or an exponent beyond 400.
         """
-        self.numbers()
         present = self.present()
-        if self.cells.dtype == object:
-            texts = self._texts(present)
-        else:
-            texts = [repr(value) for value in self.cells[present].tolist()]
-        split = [_mantissa_and_places(text) for text in texts]
-        finest, coarsest = max((p for _, p in split), default=0), min((p for _, p in split), default=0)
+        integers, shifts = self._parts(present)
+        finest, coarsest = (int(shifts.max()), int(shifts.min())) if len(shifts) else (0, 0)
         if max(finest, -coarsest) > _LARGEST_PLACES:
-            row = int(np.flatnonzero(present)[max(range(len(split)), key=lambda i: abs(split[i][1]))])
+            row = int(np.flatnonzero(present)[np.argmax(np.abs(shifts))])
             limits = f"at most {_LARGEST_PLACES} decimal places or final zeros are read"
             message = f"{self.place(row)}: {self.name} {_shown(self.cells[row])} is out of range: {limits}"
             raise InputError(message)
         places = max(finest, 0)
-        scaled = [mantissa * 10 ** (places - p) for mantissa, p in split]
-        fits = all(abs(value) < 2**62 for value in scaled)
-        integers = np.zeros(len(self.cells), dtype=np.int64 if fits else object)
-        integers[present] = scaled
-        return Decimals(frozen(integers), places, frozen(present))
+        scaled = _scaled(integers, places - shifts)
+        whole = np.zeros(len(self.cells), dtype=scaled.dtype)
+        whole[present] = scaled
+        return Decimals(frozen(whole), places, frozen(present))
+
+    def _parts(self, present: BoolArray) -> tuple[AnyArray, IntArray]:
+        """Return the readings that are there as whole numbers and the decimal places of each."""
+        if self.cells.dtype == np.int64:
+            return self.cells, np.zeros(len(self.cells), dtype=np.int64)
+        texts, sign = self.cells[present], self.decimal
+        if texts.dtype != object:
+            self.numbers()  # refuses what is not finite
+            texts, sign = np.array([repr(value) for value in texts.tolist()], dtype=object), "."
+        plain = plain_decimals(texts, sign)
+        slow = np.flatnonzero(~plain.is_plain)
+        if not len(slow):
+            return plain.integers, plain.places
+        self.numbers()  # refuses what is no number
+        split = [_mantissa_and_places(text.replace(sign, ".")) for text in texts[slow].tolist()]
+        small = all(abs(number) < _LARGEST_INTEGER for number, _ in split)
+        integers: AnyArray = plain.integers if small else plain.integers.astype(object)
+        integers[slow] = [number for number, _ in split]
+        plain.places[slow] = [min(max(places, -_LARGEST_INTEGER), _LARGEST_INTEGER) for _, places in split]
+        return integers, plain.places
 
     def flags(self) -> BoolArray:
         """The cells as yes or no; bool array of shape (n,).
@@ -157,17 +176,18 @@ class Column:
         InputError
             If a cell is none of yes, true, x, 1, no, false, 0 or empty.
         """
+        texts = self.cells.tolist()
         if self.cells.dtype != object:
-            values = np.nan_to_num(self.cells.astype(np.float64))
-            texts = [str(int(v)) if v in (0.0, 1.0) else str(v) for v in values.tolist()]
-        else:
-            texts = [text.strip().lower() for text in self.cells]
-        for row, text in enumerate(texts):
-            if text not in _YES and text not in _NO:
-                allowed = "yes or no (or 1, 0, true, false, x, empty)"
-                message = f"{self.place(row)}: {self.name} must be {allowed}, got {_shown(text)}"
-                raise InputError(message)
-        return np.array([text in _YES for text in texts], dtype=bool)
+            texts = [str(int(v)) if v in (0.0, 1.0) else str(v) for v in np.nan_to_num(self.cells).tolist()]
+        meaning = {text: text.strip().lower() for text in set(texts)}
+        unclear = {text for text, word in meaning.items() if word not in _YES and word not in _NO}
+        if unclear:
+            row = next(row for row, text in enumerate(texts) if text in unclear)
+            allowed = "yes or no (or 1, 0, true, false, x, empty)"
+            message = f"{self.place(row)}: {self.name} must be {allowed}, got {_shown(meaning[texts[row]])}"
+            raise InputError(message)
+        yes = {text for text, word in meaning.items() if word in _YES}
+        return np.fromiter(map(yes.__contains__, texts), bool, len(texts))
 
     def _texts(self, present: BoolArray) -> list[str]:
         """Return the cells that hold something, each a number with "." as its decimal sign."""
@@ -219,6 +239,20 @@ def _mantissa_and_places(text: str) -> tuple[int, int]:
     return int(whole + fraction), len(fraction) - (int(exponent) if exponent else 0)
 
 
+def _scaled(integers: AnyArray, zeros: IntArray) -> AnyArray:
+    """Return integers * 10**zeros, as int64 where all of them stay below 2**62 in size, or else as Python integers."""
+    if integers.dtype == np.int64:
+        used = np.where(integers == 0, 0, np.minimum(zeros, _LARGEST_POWER + 1))
+        size = np.abs(integers.astype(np.float64)) * 10.0**used
+        # floats are right to a relative 1e-15 here, and the room is a factor 2
+        if (used <= _LARGEST_POWER).all() and size.max(initial=0.0) < _LARGEST_INTEGER / 2:
+            whole: AnyArray = integers * 10**used
+            return whole
+    exact = [number * 10**power for number, power in zip(integers.tolist(), zeros.tolist(), strict=True)]
+    fits = all(abs(number) < _LARGEST_INTEGER for number in exact)
+    return np.array(exact, dtype=np.int64 if fits else object)
+
+
 def cells_of(series: "pd.Series[Any]", *, is_id: bool) -> AnyArray:
     """The cells of a pandas series, for a Column.
 
@@ -248,4 +282,8 @@ def cells_of(series: "pd.Series[Any]", *, is_id: bool) -> AnyArray:
         return series.to_numpy(dtype=np.float64, na_value=np.nan, copy=True)
     if not is_id and kind in "iu" and not blank.any() and (kind == "i" or not len(series) or series.max() < 2**63):
         return series.to_numpy(dtype=np.int64, copy=True)
-    return np.array(["" if b else str(v) for b, v in zip(blank, series, strict=True)], dtype=object)
+    cells = series.to_numpy(dtype=object, copy=True)
+    cells[blank] = ""
+    if set(map(type, cells.tolist())) <= {str}:
+        return cells
+    return np.array(list(map(str, cells.tolist())), dtype=object)

@@ -137,7 +137,7 @@ class Dataset:
         tail, head, vertex_ids = _number_ends(start, end, vertex_ids)
         points = None if nodes is None else _points(nodes)
         if edge_ids is None:
-            edge_ids = np.array([str(row + 1) for row in range(len(tail))], dtype=object)
+            edge_ids = np.array(list(map(str, range(1, len(tail) + 1))), dtype=object)
         complex_ = Complex.from_edges(
             tail, head, len(vertex_ids), vertex_ids=vertex_ids, edge_ids=edge_ids, points=points
         )
@@ -272,14 +272,23 @@ def _offer(name: str, known: list[str]) -> str:
 
 
 def _refuse_empty(column: Column) -> None:
-    blank = np.array([not cell.strip() for cell in column.cells], dtype=bool)
-    if blank.any():
-        message = f"{column.place(int(np.argmax(blank)))}: {column.name} is empty; every row needs one"
+    texts = column.cells.tolist()
+    if "" in texts or any(map(str.isspace, texts)):
+        row = next(row for row, cell in enumerate(texts) if not cell.strip())
+        message = f"{column.place(row)}: {column.name} is empty; every row needs one"
         raise InputError(message)
 
 
 def _unique_ids(column: Column, what: str) -> ObjectArray:
+    import pandas as pd
+
     _refuse_empty(column)
+    if not pd.Index(column.cells, dtype=object).is_unique:
+        _refuse_repeated(column, what)
+    return column.cells
+
+
+def _refuse_repeated(column: Column, what: str) -> None:
     seen: dict[str, int] = {}
     for row, name in enumerate(column.cells):
         if name in seen:
@@ -287,19 +296,20 @@ def _unique_ids(column: Column, what: str) -> ObjectArray:
             message = f"{column.place(row)}: {what} id {name!r} is used before ({first}); ids must differ"
             raise InputError(message)
         seen[name] = row
-    return column.cells
 
 
 def _number_ends(start: Column, end: Column, vertex_ids: ObjectArray | None) -> tuple[IntArray, IntArray, ObjectArray]:
+    """Return vertex numbers of both ends, and the ids; without ids the vertices count in order of first mention."""
+    import pandas as pd
+
+    given = np.empty(0, dtype=object) if vertex_ids is None else vertex_ids
     ends = np.stack([start.cells, end.cells], axis=1).ravel()
+    found, names = pd.factorize(np.concatenate([given, ends]), use_na_sentinel=False)
+    found = np.asarray(found[len(given) :], dtype=np.int64)
     if vertex_ids is None:
-        number = {name: index for index, name in enumerate(dict.fromkeys(ends))}
-        vertex_ids = np.array(list(number), dtype=object)
-    else:
-        number = {name: index for index, name in enumerate(vertex_ids)}
-    found = np.array([number.get(name, -1) for name in ends], dtype=np.int64)
-    if (found < 0).any():
-        at = int(np.argmax(found < 0))
+        vertex_ids = np.asarray(names, dtype=object)
+    elif len(names) > len(vertex_ids):
+        at = int(np.argmax(found >= len(vertex_ids)))
         column = (start, end)[at % 2]
         known = [str(name) for name in vertex_ids]
         close = difflib.get_close_matches(ends[at], known, n=2)

@@ -16,18 +16,23 @@ __all__ = ["complain", "patience", "print_json", "remark", "show", "to_nowhere",
 _SECONDS = 2.0
 
 
-def show(options: argparse.Namespace, found: dict[str, Any], view: Callable[[dict[str, Any]], Iterable[Any]]) -> None:
-    """Print a result as JSON or as text, or nothing with --quiet."""
+def show(
+    options: argparse.Namespace, found: dict[str, Any] | str, view: Callable[[dict[str, Any]], Iterable[Any]]
+) -> None:
+    """Print a result, an object or already its JSON text, as JSON or for reading; nothing with --quiet."""
     if options.json:
         print_json(found)
-    elif not options.quiet:
+    elif not options.quiet and not isinstance(found, str):
         _print(view(found))
 
 
-def print_json(found: dict[str, Any]) -> None:
-    """Print one JSON object on one line; in ASCII where the output's encoding is not Unicode."""
+def print_json(found: dict[str, Any] | str) -> None:
+    """Print one JSON object, or its text, on one line; in ASCII where the output's encoding is not Unicode."""
     plain = not _is_unicode()
-    write((json.dumps(found, ensure_ascii=plain, allow_nan=False) + "\n").encode(_encoding(), "backslashreplace"))
+    if plain and isinstance(found, str):
+        found = json.loads(found)
+    text = found if isinstance(found, str) else json.dumps(found, ensure_ascii=plain, allow_nan=False)
+    write((text + "\n").encode(_encoding(), "backslashreplace"))
 
 
 def _print(parts: Iterable[Any]) -> None:

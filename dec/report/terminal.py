@@ -9,11 +9,23 @@ from rich.padding import Padding
 from rich.table import Table
 from rich.text import Text
 
-from dec.report.wording import checked_sentence, number, suspect_sentences, verdict_sentence, visible
+from dec.report.suspicion import (
+    called,
+    chance_sentence,
+    leak_words,
+    part_sentences,
+    reading_of,
+    robust_sentences,
+    suspect_sentences,
+    together_sentences,
+    what_if_sentence,
+)
+from dec.report.wording import checked_sentence, number, verdict_sentence, visible
 
-__all__ = ["audit_view", "check_view", "solve_view"]
+__all__ = ["SHOWN", "audit_view", "check_view", "presets_view", "solve_view"]
 
 _ROWS = 8
+SHOWN = 20  # rows of each table that a view needs: more than its own, and all edges that are suspects
 _AXES = ("x", "y", "z")
 _ON_MESH = ("faces", "cells", "shells", "regions", "boundaries", "holes")
 _ONE = {"vertices": "vertex", "edges": "edge", "faces": "face", "cells": "cell"}
@@ -27,7 +39,7 @@ def audit_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
     Parameters
     ----------
     result : mapping
-        The object that ``Audit.to_dict`` returns.
+        The object that ``Audit.to_dict`` returns, with all rows or with `SHOWN` of them.
 
     Yields
     ------
@@ -40,6 +52,13 @@ def audit_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         yield _item("suspect" if not place else "", line)
     if checked_sentence(result):
         yield _item("checked", checked_sentence(result))
+    for name, lines in (
+        ("parts", part_sentences(result)), ("what if", [what_if_sentence(result)]),
+        ("together", together_sentences(result)),
+        ("robust", robust_sentences(result)), ("chance", [chance_sentence(result)]),
+    ):  # fmt: skip
+        for place, line in enumerate(filter(None, lines)):
+            yield _item(name if not place else "", line)
     for place, statement in enumerate(result.get("whole") or ()):
         says = "exactly" if statement["holds"] else f"NOT: {statement['left']} against {statement['right']}"
         yield _item("exactly" if not place else "", f"{visible(statement['name'])}: {says}")
@@ -55,7 +74,8 @@ def check_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
     yield _heading(result, "check", not failed)
     counts = (f"{n:,} {_ONE[name] if n == 1 else name}" for name, n in result["counts"].items())
     yield _item("cells", ", ".join(counts))
-    betti = ", ".join(f"b{k} = {n}" for k, n in enumerate(result["betti"]))
+    numbers = result["betti"]
+    betti = "holes not counted" if numbers is None else ", ".join(f"b{k} = {n}" for k, n in enumerate(numbers))
     yield _item(
         "shape", f"{_plural(result['components'], 'component')}, Euler characteristic {result['euler']}, {betti}"
     )
@@ -70,6 +90,14 @@ def check_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         table.add_row(mark, visible(finding["name"]), against, _places(finding["where"]))
     yield table
     yield from _remarks("note", result["notes"])
+
+
+def presets_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
+    """The presets for reading: what each sets, in words, with its source."""
+    for preset in result["presets"]:
+        figures = ", ".join(f"{name}={number(float(value))}" for name, value in preset["figures"].items())
+        yield Text(f"{preset['name']}  [{preset['sets']}]  {figures}")
+        yield Padding(Text(visible(preset["says"].partition(": ")[2])), (0, 0, 1, 4))
 
 
 def solve_view(result: Mapping[str, Any], *, why: bool = False) -> Iterator[RenderableType]:
@@ -121,46 +149,67 @@ def _tables(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         yield from _suspects(result)
     if result["law"] == "balance" and "vertices" in result:
         rows = [v for v in result["vertices"] if v["residual"] is not None]
-        rows.sort(key=lambda v: -(v["statistic"] if v["statistic"] is not None else abs(v["residual"])))
-        yield from _worst("vertices", "in - out + supply", rows, "residual")
+        rows.sort(key=lambda v: -_badness(v))
+        yield from _worst("vertices", "in - out + supply", rows, "residual", _count(result, "vertices", rows))
     elif "loops" in result:
         yield from _loops(result)
         if result["loops"] or result["asked"].get("fixed"):
-            yield from _potentials(result["vertices"])
+            yield from _potentials(result["vertices"], _count(result, "vertices", result["vertices"]))
     tables = {name: result[name] for name in _ON_MESH if result.get(name)}
     places = (row.get(axis) for rows in tables.values() for row in rows for axis in _AXES)
     size = max((abs(place) for place in places if place is not None), default=0.0)
+    size = result.get("shown", {}).get("largest_coordinate", size)
     for name, rows in tables.items():
-        yield from _worst_cells(name, rows, size)
+        yield from _worst_cells(name, rows, size, _count(result, name, rows))
+
+
+def _badness(row: Mapping[str, Any]) -> float:
+    """Return what a vertex misses, in its sd or over its limit where it has one."""
+    if row["statistic"] is not None:
+        return float(row["statistic"])
+    return float(abs(row["residual"]) / (row["limit"] or 1.0))
+
+
+def _count(result: Mapping[str, Any], name: str, rows: Sequence[Any]) -> int:
+    """Return how many rows there are in all, of which these may be the first."""
+    return int(result.get("shown", {}).get("of", {}).get(name, len(rows)))
 
 
 def _suspects(result: Mapping[str, Any]) -> Iterator[RenderableType]:
-    edges = {e["id"]: e for e in result.get("edges", ())}
     table = _table(
-        ("suspect", "left"), ("reads", "right"), ("adjusted", "right"), ("all else", "right"), ("times sd", "right"),
-        ("detectable", "right"), title="readings that stand out",
+        ("suspect", "left"), ("reads", "right"), ("all else", "right"), ("times sd", "right"), ("", "left"),
+        title="what stands out, loudest first",
     )  # fmt: skip
     for suspect in result["suspects"][:_ROWS]:
-        edge = edges.get(suspect["id"], {})
+        alike, is_place = suspect["inseparable_from"], suspect["kind"] == "vertex"
+        more = f"or {called(alike[0], result['law'])}{', ...' if len(alike) > 1 else ''}" if alike else ""
+        value, estimate = (None, "") if is_place else reading_of(suspect, result)
+        words = ", ".join(filter(None, (leak_words(suspect, result) if is_place else "", more)))
         table.add_row(
-            visible(suspect["id"]), number(edge.get("value")), number(edge.get("adjusted")),
-            number(suspect["estimate"]), number(suspect["statistic"], 3), number(edge.get("detectable"), 3),
+            called(suspect, result["law"]), "" if is_place else number(value), estimate,
+            number(suspect["statistic"], 3), words,
         )  # fmt: skip
     yield table
-    yield from _more(len(result["suspects"]))
+    yield from _more(len(result["suspects"]), "--json")
 
 
-def _worst(title: str, heading: str, rows: Sequence[Mapping[str, Any]], key: str) -> Iterator[RenderableType]:
+def _worst(
+    title: str, heading: str, rows: Sequence[Mapping[str, Any]], key: str, count: int
+) -> Iterator[RenderableType]:
     if not rows:
         return
-    with_sd = any(row["sd"] is not None for row in rows)
+    with_sd, with_limit = (any(row[name] is not None for row in rows) for name in ("sd", "limit"))
     spread = (("sd", "right"), ("times sd", "right")) if with_sd else ()
-    table = _table((title, "left"), (heading, "right"), *spread, title=f"{title}, worst first")
+    held = (("allowed", "right"), ("", "left")) if with_limit else ()
+    table = _table((title, "left"), (heading, "right"), *spread, *held, title=f"{title}, worst first")
     for row in rows[:_ROWS]:
-        figures = (number(row["sd"], 3), number(row["statistic"], 3)) if with_sd else ()
+        figures: list[str | Text] = [number(row["sd"], 3), number(row["statistic"], 3)] if with_sd else []
+        if with_limit:
+            mark = Text(_MARK[row["holds"]], _STYLE[row["holds"]]) if row["holds"] is not None else Text("")
+            figures += [number(row["limit"], 4), mark]
         table.add_row(visible(row["id"]), number(row[key]), *figures)
     yield table
-    yield from _more(len(rows), "--json or --vertices FILE")
+    yield from _more(count, "--json or --vertices FILE")
 
 
 def _loops(result: Mapping[str, Any]) -> Iterator[RenderableType]:
@@ -174,18 +223,25 @@ def _loops(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         ("legs", "left"),
         title="loops, worst first",
     )
+    read_at = "at_vertices" in result
     for loop in result["loops"][:_ROWS]:
-        legs = " ".join(f"{'+' if sign > 0 else '-'}{visible(name)}" for name, sign in loop["legs"][:6])
+        legs = " ".join(f"{'+' if sign > 0 else '-'}{_leg(name, read_at)}" for name, sign in loop["legs"][:6])
         more = f" ... {len(loop['legs'])} legs" if len(loop["legs"]) > 6 else ""
         mark = Text(_MARK[loop["holds"]], _STYLE[loop["holds"]])
-        held = f", {visible(loop['held'][0])} to {visible(loop['held'][1])} held" if loop["held"] else ""
+        ends = [visible(name) for name in loop["held"] or () if name != "outside"]
+        held = f", {' to '.join(ends)} held" if ends else ""
         row = (number(loop["misclosure"]), number(loop["limit"], 4), mark, legs + more + held)
         table.add_row(visible(loop["id"]), *row)
     yield table
-    yield from _more(len(result["loops"]), "--json")
+    yield from _more(_count(result, "loops", result["loops"]), "--json")
 
 
-def _potentials(rows: Sequence[Mapping[str, Any]]) -> Iterator[RenderableType]:
+def _leg(name: str, read_at: bool) -> str:
+    """Return a leg's name; one through a measured potential is no line but the way there from the datum."""
+    return f"(reading {visible(name)})" if read_at and name.startswith("at ") else visible(name)
+
+
+def _potentials(rows: Sequence[Mapping[str, Any]], count: int) -> Iterator[RenderableType]:
     with_sd = any(row["potential_sd"] is not None for row in rows)
     spread = (("sd", "right"),) if with_sd else ()
     table = _table(("vertices", "left"), ("adjusted", "right"), *spread, title="vertices, as numbered")
@@ -193,10 +249,10 @@ def _potentials(rows: Sequence[Mapping[str, Any]]) -> Iterator[RenderableType]:
         figures = (number(row["potential_sd"], 3),) if with_sd else ()
         table.add_row(visible(row["id"]), number(row["potential"], 9), *figures)
     yield table
-    yield from _more(len(rows), "--json or --vertices FILE")
+    yield from _more(count, "--json or --vertices FILE")
 
 
-def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]], size: float) -> Iterator[RenderableType]:
+def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]], size: float, count: int) -> Iterator[RenderableType]:
     """Yield one table; `size` is the largest coordinate of the audit, against which rounding noise shows as 0."""
     table = _table(
         (name, "left"),
@@ -212,7 +268,7 @@ def _worst_cells(name: str, rows: Sequence[Mapping[str, Any]], size: float) -> I
         mark = Text(_MARK[row["holds"]], _STYLE[row["holds"]])
         table.add_row(visible(row["id"]), number(row["value"]), number(row["limit"], 3), mark, place)
     yield table
-    yield from _more(len(rows), "--json or -o FILE" if name in ("faces", "cells") else "--json")
+    yield from _more(count, "--json or -o FILE" if name in ("faces", "cells") else "--json")
 
 
 def _kind(result: Mapping[str, Any]) -> str:

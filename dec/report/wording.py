@@ -1,11 +1,13 @@
 """A result in plain sentences: the verdict, the first suspect, what was not checked."""
 
 from collections.abc import Mapping, Sequence
+from math import floor, log10
 from typing import Any
 
-__all__ = ["checked_sentence", "number", "suspect_sentences", "verdict_sentence", "visible"]
+__all__ = ["checked_sentence", "estimated", "number", "unit_of", "verdict_sentence", "visible"]
 
 _NAMED = 5
+_DIGITS, _MOST_WHOLE, _MOST_DIGITS = 4, 9, 15
 
 
 def visible(text: object) -> str:
@@ -34,6 +36,23 @@ def number(value: Any, digits: int = 6) -> str:
     return visible(value)
 
 
+def estimated(value: float | None, sd: float | None = None) -> str:
+    """An estimate for reading: four significant digits, or as many as its standard deviation bears out.
+
+    Whole digits are always shown, so that 33757.6 with a standard deviation of 50 is no power of ten.
+
+    Examples
+    --------
+    >>> estimated(5.0123456, 0.1), estimated(101.23456, 0.003), estimated(33757.634, 50.0), estimated(None)
+    ('5.012', '101.235', '33758', '-')
+    """
+    if not value:
+        return number(value)
+    whole = floor(log10(abs(value))) + 1
+    borne_out = whole - floor(log10(sd)) if sd else 0
+    return number(float(value), min(max(_DIGITS, borne_out, whole if whole <= _MOST_WHOLE else 0), _MOST_DIGITS))
+
+
 def verdict_sentence(result: Mapping[str, Any]) -> str:
     """What the law says of these numbers, with the figures that decide it."""
     if result.get("verdict"):
@@ -59,49 +78,53 @@ def verdict_sentence(result: Mapping[str, Any]) -> str:
     limit = result["limit"]
     if limit:
         amount = f"every residual is within {number(limit)}" if holds else f"residuals exceed {number(limit)}"
-        return f"{subject.capitalize()} {says}: {amount}{_unit(result)}, {checks}."
+        return f"{subject.capitalize()} {says}: {amount}{unit_of(result)}, {checks}."
     exactly = (
         "the decimals as written add up to exactly zero" if holds else "the decimals as written do not add up to zero"
     )
     return f"{subject.capitalize()} {says}: {exactly}, {checks}."
 
 
-def suspect_sentences(result: Mapping[str, Any]) -> list[str]:
-    """The first suspect, what cannot be told from it, and what would explain it."""
-    if not result["suspects"]:
-        return []
-    first = result["suspects"][0]
-    edge = next((e for e in result.get("edges", ()) if e["id"] == first["id"]), None)
-    where = f" ({visible(edge['from'])} to {visible(edge['to'])}) reads {number(edge['value'])}" if edge else ""
-    says = f", all else says {number(first['estimate'])}" if first["estimate"] is not None else ""
-    lines = [f"{first['kind']} {visible(first['id'])}{where}{says}{_unit(result)}: {number(first['statistic'], 3)} sd"]
-    if first["inseparable_from"]:
-        names = ", ".join(visible(other["id"]) for other in first["inseparable_from"][:_NAMED])
-        lines.append(f"no reading can tell it from {names}")
-    if first["hint"]:
-        lines.append(first["hint"])
-    return lines
-
-
 def checked_sentence(result: Mapping[str, Any]) -> str:
     """How many readings are checked, and which are not."""
-    edges: Sequence[Mapping[str, Any]] = result.get("edges", ())
-    if not edges:
+    standing = _standing(result)
+    if not standing:
         return ""
-    by_standing: dict[str, list[str]] = {}
-    for edge in edges:
-        by_standing.setdefault(edge["standing"], []).append(edge["id"])
     measured = result["counts"]["measured"]
-    parts = [f"{len(by_standing.get('checked', ()))} of {measured} reading{'' if measured == 1 else 's'}"]
+    parts = [f"{standing['checked']['count']} of {measured} {_what_is_checked(result, measured)}"]
     for word in ("unchecked", "inferred", "unknown"):
-        names = by_standing.get(word, [])
-        if names:
-            more = ", ..." if len(names) > _NAMED else ""
-            parts.append(f"{len(names)} {word} ({', '.join(visible(n) for n in names[:_NAMED])}{more})")
+        count, names = standing[word]["count"], standing[word]["first"]
+        if count:
+            more = ", ..." if count > _NAMED else ""
+            parts.append(f"{count} {word} ({', '.join(visible(n) for n in names[:_NAMED])}{more})")
     return "; ".join(parts)
 
 
-def _unit(result: Mapping[str, Any]) -> str:
+def _what_is_checked(result: Mapping[str, Any], measured: int) -> str:
+    """Return "readings", or "measured edges" where a table of readings gives some edges several."""
+    if "readings" not in result:
+        return f"reading{'' if measured == 1 else 's'}"
+    count = result.get("shown", {}).get("of", {}).get("readings", len(result["readings"]))
+    edges = f"measured edge{'' if measured == 1 else 's'}"
+    return edges if count == measured else f"{edges}, which {'has' if measured == 1 else 'have'} {count} readings"
+
+
+def _standing(result: Mapping[str, Any]) -> Mapping[str, Any]:
+    """Return how many edges have each standing and the first of them; nothing where there are no edges."""
+    edges: Sequence[Mapping[str, Any]] = result.get("edges", ())
+    if not edges:
+        return {}
+    counted = result.get("shown", {}).get("standing")
+    if counted is not None:
+        return dict(counted)
+    by_standing: dict[str, list[str]] = {word: [] for word in ("checked", "unchecked", "inferred", "unknown")}
+    for edge in edges:
+        by_standing[edge["standing"]].append(edge["id"])
+    return {word: {"count": len(names), "first": names} for word, names in by_standing.items()}
+
+
+def unit_of(result: Mapping[str, Any]) -> str:
+    """The unit of an audit after a space; empty where none was given."""
     unit = result["asked"].get("unit")
     return f" {visible(unit)}" if unit else ""
 

@@ -8,7 +8,7 @@ from typing import Any, ParamSpec, TypeVar, cast
 
 import numpy as np
 
-__all__ = ["compiled"]
+__all__ = ["compiled", "plain"]
 
 P = ParamSpec("P")
 R = TypeVar("R")
@@ -31,7 +31,7 @@ def compiled(kernel: Callable[P, R]) -> Callable[P, R]:
     @wraps(kernel)
     def run(*args: P.args, **kwargs: P.kwargs) -> R:
         if _size(args) <= SMALL:
-            return cast("R", _plain(run)(*args, **kwargs))
+            return cast("R", plain(run)(*args, **kwargs))
         try:
             return cast("R", _machine(run)(*args, **kwargs))
         except _DAMAGED:  # the cached code did not load, so nothing has run yet
@@ -52,9 +52,9 @@ def _size(args: Iterable[object]) -> int:
 
 
 @cache
-def _plain(run: Callable[..., Any]) -> Callable[..., Any]:
-    """Return the kernel as written; the kernels that it calls do not look at sizes again."""
-    return _linked(run, _plain)
+def plain(run: Callable[..., Any]) -> Callable[..., Any]:
+    """The kernel as written, never compiled, and so the kernels that it calls: also for arrays of Python objects."""
+    return _linked(run, plain)
 
 
 @cache

@@ -9,6 +9,8 @@ import pytest
 import dec.audit.laplacian
 from dec.audit.laplacian import BLOCK, Laplacian
 from dec.errors import AccuracyError
+from dec.solvers.choice import Choice
+from dec.solvers.elimination import Elimination
 
 
 def dense(tail: np.ndarray, head: np.ndarray, n: int, conductance: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
@@ -31,7 +33,8 @@ def test_shares_and_resistances_are_those_of_the_pseudo_inverse(seed: int, sprea
     laplacian = Laplacian(tail, head, n, conductance)
     D, inverse = dense(tail, head, n, conductance)
     same = np.array([(a, b) for a, b in combinations(range(n), 2) if laplacian.component[a] == laplacian.component[b]])
-    share, slack, resistance = laplacian.figures(same[:, 0], same[:, 1])
+    share, slack = laplacian.shares()
+    resistance = laplacian.resistances(same[:, 0], same[:, 1])
     expected = conductance * np.einsum("ij,jk,ik->i", D, inverse, D)
     assert share == pytest.approx(expected, abs=1e-9)
     assert share + slack == pytest.approx(np.ones(len(tail)), abs=1e-15)
@@ -74,13 +77,13 @@ def test_the_ground_may_be_chosen_and_takes_up_what_is_left_over():
 def test_neighbours_on_platonic_solids_have_resistance_2_n_minus_1_over_n_degree(n: int, degree: int, edges: list):
     """Ponder This, October 2007 (READ): 1/2, 7/12, 5/12."""
     tail, head = np.array(edges).T
-    _, _, resistance = Laplacian(tail, head, n, np.ones(len(edges))).figures(tail, head)
+    resistance = Laplacian(tail, head, n, np.ones(len(edges))).resistances(tail, head)
     assert resistance == pytest.approx(np.full(len(edges), float(Fraction(2 * (n - 1), n * degree))), rel=1e-13)
 
 
 def test_parallel_edges_add_and_self_loops_carry_nothing():
     laplacian = Laplacian(np.array([0, 1, 1]), np.array([1, 0, 1]), 2, np.array([1.0, 2.0, 5.0]))
-    share, slack, resistance = laplacian.figures(np.array([0]), np.array([1]))
+    (share, slack), resistance = laplacian.shares(), laplacian.resistances(np.array([0]), np.array([1]))
     assert resistance == pytest.approx([1 / 3])
     assert share == pytest.approx([1 / 3, 2 / 3, 0])
     assert slack == pytest.approx([2 / 3, 1 / 3, 1])
@@ -91,7 +94,8 @@ def test_no_vertices_and_no_edges_are_an_answer_too():
     for n in (0, 3):
         laplacian = Laplacian(none, none, n, np.empty(0))
         assert laplacian.n_components == n
-        assert [len(part) for part in laplacian.figures(none, none)] == [0, 0, 0]
+        assert [len(part) for part in (*laplacian.shares(), laplacian.resistances(none, none))] == [0, 0, 0]
+        assert laplacian.to_ground().tolist() == [0.0] * n
         assert laplacian.change(np.zeros(n))[0].shape == (0,)
 
 
@@ -115,6 +119,55 @@ def test_a_small_slack_keeps_its_digits():
     weak, strong = Fraction(1), Fraction(10) ** 10
     tail, head = np.array([0, 1, 0]), np.array([1, 2, 2])
     conductance = np.array([float(strong), float(strong), float(weak)])
-    _, slack, _ = Laplacian(tail, head, 3, conductance).figures(tail, head)
+    _, slack = Laplacian(tail, head, 3, conductance).shares()
     past = 1 / (1 / strong + 1 / weak)
     assert slack[0] == pytest.approx(float(past / (strong + past)), rel=1e-12)
+
+
+def on_both_engines(monkeypatch, tail, head, n, conductance) -> tuple[Laplacian, Laplacian]:
+    """The same Laplacian with an exact factor, and as one that is too large for it."""
+    exact = Laplacian(tail, head, n, conductance, ground=0)
+    engine = choice_of(Elimination())
+    monkeypatch.setattr(dec.audit.laplacian, "choose", lambda _: engine)
+    monkeypatch.setattr(dec.audit.laplacian, "sparse_order", lambda *_: None)
+    return exact, Laplacian(tail, head, n, conductance, ground=0)
+
+
+def choice_of(method):
+    return Choice(method, "for a test")
+
+
+@pytest.mark.parametrize("seed", range(5))
+def test_an_iterative_engine_gives_the_same_to_rounding(monkeypatch, seed: int):
+    rng = np.random.default_rng(seed)
+    tail, head, conductance = random_graph(seed, 30, 70, 1.5)
+    exact, large = on_both_engines(monkeypatch, tail, head, 30, conductance)
+    assert (exact.gives_all, large.gives_all) == (True, False)
+    missed = exact.gather @ rng.normal(size=(70, 3))
+    change, potential = exact.change(missed)
+    again, level = large.change(missed)
+    assert again == pytest.approx(change, rel=1e-11, abs=1e-12)
+    assert level == pytest.approx(potential, rel=1e-9, abs=1e-12)
+    assert large.gather @ again + missed == pytest.approx(np.zeros((30, 3)), abs=1e-13)
+    share, slack, error = large.figures("all")
+    assert error == 0
+    assert share == pytest.approx(exact.shares()[0], abs=1e-12)
+    assert slack == pytest.approx(exact.shares()[1], abs=1e-12)
+    assert large.figures("auto") == (None, None, 0.0)
+
+
+def test_random_projection_errs_as_stated_and_small_slacks_are_exact(monkeypatch):
+    tail, head, conductance = random_graph(8, 60, 200, 1.0)
+    exact, large = on_both_engines(monkeypatch, tail, head, 60, conductance)
+    share, slack, error = large.figures("estimate")
+    true, rest = exact.shares()
+    assert error == 0.1
+    moves = tail != head
+    off = np.abs(share - true)[moves] / true[moves]
+    assert np.sqrt(np.mean(off**2)) < 1.5 * error
+    assert off.max() > 1e-6
+    small = (rest < 0.2) & (tail != head)
+    assert small.sum() > 3
+    assert slack[small] == pytest.approx(rest[small], rel=1e-9)
+    bridge = exact.settled
+    assert (slack[bridge] == 0).all()

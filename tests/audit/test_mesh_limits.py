@@ -3,9 +3,9 @@
 import numpy as np
 import pytest
 
-from dec.audit.mesh_holes import find_holes
-from dec.audit.mesh_limits import Limit, Sums, read_limit, table_of, worst_first
-from dec.audit.mesh_repeats import repeated_cells
+from dec.audit.meshes.holes import find_holes
+from dec.audit.meshes.limits import Limit, Sums, read_limit, table_of, worst_first
+from dec.audit.meshes.repeats import repeated_cells
 from dec.calculus.complex import Complex
 
 from .mesh_shapes import sample

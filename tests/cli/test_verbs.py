@@ -308,6 +308,20 @@ def test_output_that_the_encoding_cannot_show_is_escaped(junction):
         assert (b"\\xc4" if encoding == "ascii" else "Ä".encode("cp1252")) in done.stdout
 
 
+def test_json_is_the_same_object_in_any_encoding(junction):
+    (junction / "e.csv").write_text("from,to,flow\nÄ,J,1\nJ,T,1\n", encoding="utf-8")
+    words = [sys.executable, "-m", "dec", "balance", str(junction / "e.csv"), "--value", "flow", "--json"]
+    said = [
+        subprocess.run(
+            words, capture_output=True, check=False, env={**os.environ, "PYTHONIOENCODING": encoding}, timeout=120
+        ).stdout
+        for encoding in ("ascii", "utf-8")
+    ]
+    assert said[0].isascii()
+    assert "Ä".encode() in said[1]
+    assert json.loads(said[0]) == json.loads(said[1])
+
+
 @pytest.mark.skipif(not Path("/dev/full").exists(), reason="a device of Linux")
 def test_a_full_or_closed_standard_output_exits_5_with_one_line(junction):
     line = f"{sys.executable} -m dec balance {junction / 'pipes.csv'} --value flow"
@@ -353,7 +367,7 @@ def test_adjusted_potentials_are_shown_and_written(run, tmp_path):
     assert "A to C held" in out or "C to A held" in out
     assert "11.45" in out
     rows = (tmp_path / "heights.csv").read_text().splitlines()
-    assert rows[0] == "id,potential,potential_sd"
+    assert rows[0] == "id,potential,potential_sd,fault,fault_sd,fault_statistic,class,detectable"
     assert rows[2].startswith("B,11.45,0.0707")
     (loop,) = json.loads(run(*words, "--json")[1])["loops"]
     assert sorted(loop["held"]) == ["A", "C"]

@@ -30,14 +30,28 @@ def potentials(audit: Audit) -> pd.Series:
 
 
 def closes(ends: list, known: dict, sd: float) -> Audit:
-    """Differences of known potentials as readings: every loop closes, and no statistic reaches 1e-9."""
-    audit = loops(network(ends, [float(known[str(b)] - known[str(a)]) for a, b in ends]), "y", sd=sd)
+    """Differences of known potentials as readings: every loop closes, and no statistic reaches 1e-9.
+
+    Nor does one where the first and the last potential are held, or where all are, known to the same sd.
+    """
+    net = network(ends, [float(known[str(b)] - known[str(a)]) for a, b in ends])
+    every = {name: float(value) for name, value in known.items()}
+    first, last = next(iter(known)), list(known)[-1]
+    for fixed, fixed_sd in (({first: every[first], last: every[last]}, None), (every, sd)):
+        held = loops(net, "y", sd=sd, fixed=fixed, fixed_sd=fixed_sd)
+        assert held.dof > len(ends) - len(known)
+        assert held.holds is True
+        for table, column in (("edges", "statistic"), ("vertices", "fault_statistic"), ("at_vertices", "statistic")):
+            found = held.table(table)
+            assert len(found) == 0 or (found[column].dropna() < 1e-9).all()
+        assert held.suspects == ()
+    audit = loops(net, "y", sd=sd)
     assert audit.dof > 0
     assert audit.holds is True
     assert audit.chi_square < 1e-18
     assert np.nanmax(audit.edges["statistic"]) < 1e-9
     assert all(loop["statistic"] < 1e-9 and loop["holds"] for loop in audit.loops)
-    found, first = potentials(audit), next(iter(known))
+    found = potentials(audit)
     for name, value in known.items():
         assert found[name] - found[first] == pytest.approx(float(value - known[first]), abs=1e-12)
     return audit

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from dec.arrays import AnyArray, BoolArray, FloatArray
-from dec.audit.mesh_statements import counted
+from dec.audit.meshes.statements import counted
 from dec.errors import InputError
 
 __all__ = ["Limit", "Sums", "read_limit", "table_of", "worst_first"]

@@ -1,10 +1,10 @@
 """The balance law on a mesh: nothing may appear or vanish in a face, a cell or a closed shell."""
 
-from dec.audit.mesh_cells import Balances, balance_cells
-from dec.audit.mesh_fields import Integrals, integrated, mesh_counts
-from dec.audit.mesh_limits import read_limit
-from dec.audit.mesh_shells import balance_shells
-from dec.audit.mesh_statements import all_hold, whole_rows
+from dec.audit.meshes.cells import Balances, balance_cells
+from dec.audit.meshes.fields import Integrals, integrated, mesh_counts
+from dec.audit.meshes.limits import read_limit
+from dec.audit.meshes.shells import balance_shells
+from dec.audit.meshes.statements import all_hold, whole_rows
 from dec.audit.record import Audit
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset

@@ -5,10 +5,10 @@ from collections.abc import Mapping
 import numpy as np
 
 from dec.arrays import AnyArray
-from dec.audit.mesh_fields import Integrals, boundary_sums, centres, integrated, mesh_counts, walk_places, walk_sums
-from dec.audit.mesh_holes import Holes, find_holes, no_walks
-from dec.audit.mesh_limits import Limit, read_limit, table_of
-from dec.audit.mesh_statements import (
+from dec.audit.meshes.fields import Integrals, boundary_sums, centres, integrated, mesh_counts, walk_places, walk_sums
+from dec.audit.meshes.holes import Holes, find_holes, no_walks
+from dec.audit.meshes.limits import Limit, read_limit, table_of
+from dec.audit.meshes.statements import (
     TOO_WIDE,
     all_hold,
     beyond_limit,

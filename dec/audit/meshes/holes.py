@@ -4,7 +4,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from dec.audit.mesh_statements import counted
+from dec.audit.meshes.statements import counted
 from dec.calculus.complex import Complex
 from dec.geometry.measures import is_flat
 from dec.topology.holes import hole_walks

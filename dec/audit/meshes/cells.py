@@ -6,10 +6,10 @@ from dataclasses import dataclass
 import numpy as np
 
 from dec.arrays import AnyArray, FloatArray, IntArray
-from dec.audit.mesh_fields import Integrals, boundary_sums, centres, group_sums, middles
-from dec.audit.mesh_limits import Limit, table_of
-from dec.audit.mesh_repeats import refuse_repeated
-from dec.audit.mesh_statements import TOO_WIDE, counted, measured, n_undecided, renamed, worst
+from dec.audit.meshes.fields import Integrals, boundary_sums, centres, group_sums, middles
+from dec.audit.meshes.limits import Limit, table_of
+from dec.audit.meshes.repeats import refuse_repeated
+from dec.audit.meshes.statements import TOO_WIDE, counted, measured, n_undecided, renamed, worst
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
 from dec.calculus.exact import check_stokes

@@ -55,7 +55,7 @@ def beyond_limit(table: Mapping[str, AnyArray], unit: str | None, joint: str) ->
     Parameters
     ----------
     table : mapping of str to array
-        Worst first, as from `dec.audit.mesh_limits.table_of`, with names as ids.
+        Worst first, as from `dec.audit.meshes.limits.table_of`, with names as ids.
     unit : str or None
     joint : str
         Between value and name: "round", "out of".

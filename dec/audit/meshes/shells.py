@@ -5,11 +5,11 @@ from dataclasses import replace
 import numpy as np
 
 from dec.arrays import AnyArray, BoolArray, FloatArray, IntArray
-from dec.audit.mesh_cells import Balances
-from dec.audit.mesh_fields import Integrals, group_sums, middles, row_sums
-from dec.audit.mesh_limits import Limit, Sums, table_of
-from dec.audit.mesh_repeats import refuse_repeated
-from dec.audit.mesh_statements import TOO_WIDE, beyond_limit, counted
+from dec.audit.meshes.cells import Balances
+from dec.audit.meshes.fields import Integrals, group_sums, middles, row_sums
+from dec.audit.meshes.limits import Limit, Sums, table_of
+from dec.audit.meshes.repeats import refuse_repeated
+from dec.audit.meshes.statements import TOO_WIDE, beyond_limit, counted
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError

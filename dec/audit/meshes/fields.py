@@ -6,7 +6,7 @@ import numpy as np
 from scipy.sparse import csr_array
 
 from dec.arrays import AnyArray, BoolArray, FloatArray, IntArray
-from dec.audit.mesh_limits import Sums
+from dec.audit.meshes.limits import Sums
 from dec.calculus.cochain import Cochain
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset

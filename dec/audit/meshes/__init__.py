@@ -1,0 +1,1 @@
+"""The two audits of a vector field on a mesh."""
