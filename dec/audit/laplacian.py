@@ -27,6 +27,8 @@ BLOCK = 4
 # Entries of a factor for each unknown up to which it is worth making, once a graph is too large to try: it is what
 # gives the figures of all single edges.
 _MOST_FILL = 40
+# Conductances further apart than this: differences of potentials lose too many digits, energies do not.
+_NARROW = 1e3
 # Conductances further apart than this: a sum of two keeps hardly a digit of the smaller one.
 _WIDEST = 1e14
 _TURNS = 20
@@ -236,6 +238,11 @@ class Laplacian:
         float64 array, shape (k,)
         """
         total = np.zeros(len(start))
+        if self.gives_all and self._ratio <= _NARROW:
+            for part, put_in in self._unit_flows(start, end):
+                potential, column = self._solve(put_in), np.arange(part.stop - part.start)
+                total[part] = potential[start[part], column] - potential[end[part], column]
+            return np.maximum(total, 0.0)
         for part, power in self._powers(start, end):
             total[part] = power.sum(axis=0)
         return total
@@ -288,14 +295,19 @@ class Laplacian:
 
     def _powers(self, start: IntArray, end: IntArray) -> Iterator[tuple[slice, FloatArray]]:
         """Yield pairs as slices, with the energy in every edge of the unit flow between each; shape (m, pairs)."""
+        for part, put_in in self._unit_flows(start, end):
+            flow, _ = self.change(put_in)
+            yield part, flow**2 / self.conductance[:, None]
+
+    def _unit_flows(self, start: IntArray, end: IntArray) -> Iterator[tuple[slice, FloatArray]]:
+        """Yield pairs as slices, with what goes in at the one and out at the other; shape (n_vertices, pairs)."""
         for first in range(0, len(start), BLOCK):
             part = slice(first, min(first + BLOCK, len(start)))
             column = np.arange(part.stop - part.start)
             put_in = np.zeros((self.n_vertices, len(column)))
             put_in[start[part], column] += 1.0
             put_in[end[part], column] -= 1.0
-            flow, _ = self.change(put_in)
-            yield part, flow**2 / self.conductance[:, None]
+            yield part, put_in
 
     def _solve(self, source: FloatArray) -> FloatArray:
         """Return the potentials that one solve gives, zero at the grounded vertices."""
