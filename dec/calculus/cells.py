@@ -11,12 +11,12 @@ from scipy.sparse import csr_array
 
 from dec.arrays import AnyArray, FloatArray, IntArray, ObjectArray, frozen, index_array
 from dec.calculus.arguments import checked_degree
+from dec.calculus.homology_groups import HomologyGroup, all_groups
 from dec.calculus.lattice import Lattice
 from dec.errors import InputError, TopologyError
 from dec.topology.edges import edge_coboundary, sealed
 from dec.topology.graphs import Forest, components, spanning_forest
 from dec.topology.polygons import Ragged, Walks, face_coboundary
-from dec.topology.ranks import first_betti, top_betti
 from dec.topology.surfaces import Incidences, Sheets, boundary_walks, link_labels, reversing_walk, sheets
 
 __all__ = ["Cells"]
@@ -188,21 +188,16 @@ class Cells:
         return boundary_walks(self._walks_of_faces(), self.incidences.uses, self.fans)
 
     def betti(self) -> tuple[int, ...]:
-        """Betti numbers: components, independent loops, enclosed voids, ...; exact.
+        """Betti numbers, the ranks of `homology`: components, independent loops, enclosed voids, ...; exact.
 
         Returns
         -------
         tuple of int, length dim + 1
-            Counted over the rationals by union-find, duality and integer elimination, never by a threshold.
 
         Raises
         ------
         TopologyError
-            If the cells are so entangled that the elimination would not end in reasonable time.
-
-        Notes
-        -----
-        Source: Munkres, Elements of Algebraic Topology, 1984, sections 5, 22 and 65.
+            As `homology`.
 
         Examples
         --------
@@ -210,14 +205,50 @@ class Cells:
         >>> grid((4, 4), periodic=True).betti()
         (1, 2, 1)
         """
-        b0 = self.n_components
-        if self.dim == 1:
-            return b0, b0 - self.euler
-        last = top_betti(self.incidences, self.sheets)
-        if self.dim == 2:
-            return b0, b0 + last - self.euler, last
-        b1 = first_betti(self._coboundaries[1], self.forest)
-        return b0, b1, self.euler - b0 + b1 + last, last
+        return tuple(group.rank for group in self._homology)
+
+    def homology(self, k: int, *, relative: bool = False) -> HomologyGroup:
+        """Closed chains of k-cells up to boundaries, over the whole numbers: rank, torsion and a basis of cycles.
+
+        Parameters
+        ----------
+        k : int
+        relative : bool
+            Whether to count the boundary of the complex, with all its cells, as nothing.
+
+        Returns
+        -------
+        HomologyGroup
+            Its ``rank``, ``torsion`` and, found when asked for, ``cycles``; exact.
+
+        Raises
+        ------
+        InputError
+            If k is not 0 .. dim.
+        TopologyError
+            If the cells are so entangled that the elimination would not end in reasonable time.
+
+        Notes
+        -----
+        Source: Munkres, Elements of Algebraic Topology, 1984, sections 5, 9 and 11.
+
+        Examples
+        --------
+        >>> from dec.calculus.complex import Complex
+        >>> K = Complex.from_faces([[0, 1, 2], [1, 2, 3], [2, 3, 4], [3, 4, 0], [4, 0, 1]])
+        >>> K.homology(1), K.homology(1, relative=True)
+        (<Homology of degree 1: Z>, <Homology of degree 1 relative to the boundary: Z/2>)
+        """
+        groups = self._relative_homology if relative else self._homology
+        return groups[checked_degree(k, range(self.dim + 1), self.dim)]
+
+    @cached_property
+    def _homology(self) -> tuple[HomologyGroup, ...]:
+        return all_groups(self, relative=False)
+
+    @cached_property
+    def _relative_homology(self) -> tuple[HomologyGroup, ...]:
+        return all_groups(self, relative=True)
 
     @property
     def is_orientable(self) -> bool | None:

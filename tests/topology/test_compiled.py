@@ -13,7 +13,7 @@ import dec.calculus
 import dec.topology
 from dec.calculus.complex import Complex, grid
 from dec.calculus.exact import exact_integral
-from dec.topology import graphs
+from dec.topology import graphs, modular
 from dec.topology.compiled import SMALL, compiled
 from dec.topology.cut_pairs import cut_classes
 
@@ -63,6 +63,12 @@ def use_holes():
     hole_walks(K.tail, K.head, K.incidences, K.sheets, K.forest, K.boundary_walks())
 
 
+def use_elimination():
+    matrix = np.random.default_rng(0).integers(-9, 10, (75, 75))
+    matrix[7] = matrix[3] + matrix[5]
+    modular.invertible_part(matrix, modular.prime_below(modular.LARGEST_PRIME))
+
+
 # every kernel, and something that makes it run on arrays of more than 5,000 entries
 KERNELS = {
     "dec.topology.searches.union": lambda: graphs.components(*big_graph()),
@@ -75,7 +81,9 @@ KERNELS = {
     "dec.topology.cut_pairs.depth_first": lambda: cut_classes(*big_graph()),
     "dec.topology.cut_pairs.covering": lambda: cut_classes(*big_graph()),
     "dec.topology.surfaces._trace": lambda: grid((2, 3000)).boundary_loops(),
-    "dec.topology.ranks._spread_zeros": lambda: grid((12, 12, 12)).betti(),
+    "dec.topology.reductions._collapse": lambda: grid((12, 12, 12), periodic=True).betti(),
+    "dec.topology.reductions._follow": lambda: grid((12, 12, 12), periodic=True).betti(),
+    "dec.topology.modular._eliminate": use_elimination,
     "dec.topology.holes._heaviest_forest": use_holes,
     "dec.calculus.sums._add_by_exponent": lambda: use_sums(9),
     "dec.calculus.sums._add_widely": lambda: use_sums(2**50),
@@ -91,7 +99,11 @@ def all_kernels():
     return names
 
 
-CALLED_BY_OTHERS = {"dec.topology.cut_pairs.mark_path"}  # by compiled loops alone, and compared with them
+# by compiled loops alone, and compared with them
+CALLED_BY_OTHERS = {
+    "dec.topology.cut_pairs.mark_path", "dec.topology.modular._inverse",
+    *(f"dec.topology.reductions._{name}" for name in ("collect", "complete", "copy", "longer", "sign", "take_away")),
+}  # fmt: skip
 
 
 def test_no_compiled_loop_of_these_floors_is_left_out_here():
