@@ -1,7 +1,10 @@
+from . import steps as steps
 from .audit.condition import Condition as Condition
 from .audit.condition import check as check
-from .audit.presets import Preset as Preset
-from .audit.presets import preset as preset
+from .audit.digits.rounding import Rounded as Rounded
+from .audit.digits.rounding import rounded as rounded
+from .audit.given.presets import Preset as Preset
+from .audit.given.presets import preset as preset
 from .audit.questions import balance as balance
 from .audit.questions import loops as loops
 from .audit.record import Audit as Audit
@@ -15,6 +18,7 @@ from .calculus.dataset import Field as Field
 from .calculus.exact import check_line_integral as check_line_integral
 from .calculus.exact import check_stokes as check_stokes
 from .calculus.exact import exact_integral as exact_integral
+from .calculus.homology_groups import HomologyGroup as HomologyGroup
 from .calculus.networks import from_networkx as from_networkx
 from .calculus.networks import to_networkx as to_networkx
 from .errors import AccuracyError as AccuracyError

@@ -15,6 +15,7 @@ from dec.audit.names import counted
 from dec.calculus.columns import Column
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
+from dec.calculus.homology_groups import HomologyGroup
 from dec.errors import InputError, TopologyError
 from dec.findings import Finding
 from dec.geometry.shape import check_shape
@@ -55,22 +56,30 @@ class Condition:
     @property
     def betti(self) -> tuple[int, ...] | None:
         """The Betti numbers; None where the cells are so entangled that they cannot be counted in reasonable time."""
-        return self._betti[0]
+        groups = self._homology[0]
+        return None if groups is None else tuple(group.rank for group in groups)
 
     @property
-    def _uncounted(self) -> str:
-        return self._betti[1]
+    def torsion(self) -> tuple[tuple[int, ...], ...] | None:
+        """Orders of the finite parts of the homology of each degree; None as with `betti`."""
+        groups = self._homology[0]
+        return None if groups is None else tuple(group.torsion for group in groups)
 
     @cached_property
-    def _betti(self) -> tuple[tuple[int, ...] | None, str]:
+    def _homology(self) -> tuple[tuple[HomologyGroup, ...] | None, str]:
+        K = self.data.complex
         try:
-            return self.data.complex.betti(), ""
+            return tuple(K.homology(k) for k in range(K.dim + 1)), ""
         except TopologyError as error:
             return None, str(error)
 
     def to_dict(self) -> dict[str, Any]:
         """The condition as plain Python objects, keys as in the JSON."""
         K = self.data.complex
+        groups, uncounted = self._homology
+        facts = dict(self.facts)
+        if K.dim > 1 and groups is not None:
+            facts["homology"] = ", ".join(f"H{group.degree} = {group}" for group in groups)
         return {
             "schema": SCHEMA,
             "holds": self.holds,
@@ -79,7 +88,7 @@ class Condition:
             "dim": K.dim,
             "euler": K.euler,
             "betti": None if self.betti is None else list(self.betti),
-            "torsion": None if K.dim > 1 else [[] for _ in K.counts],
+            "torsion": None if self.torsion is None else [list(orders) for orders in self.torsion],
             "components": K.n_components,
             "manifold": K.is_manifold,
             "orientable": K.is_orientable,
@@ -93,8 +102,8 @@ class Condition:
                 }
                 for f in self.findings
             ],
-            "facts": dict(self.facts),
-            "notes": [*self.data.notes, *([self._uncounted] if self._uncounted else [])],
+            "facts": facts,
+            "notes": [*self.data.notes, *([uncounted] if uncounted else [])],
         }  # fmt: skip
 
     def to_json(self, *, indent: int | None = None) -> str:

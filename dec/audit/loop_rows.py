@@ -5,12 +5,13 @@ from dataclasses import dataclass
 from typing import Any, overload
 
 import numpy as np
+from scipy.sparse import csr_array
 from scipy.special import ndtri
 
 from dec.arrays import BoolArray, FloatArray, IntArray, SignArray
-from dec.audit.closures import Closures
+from dec.audit.adjusted.closures import Closures
 from dec.audit.exactly import as_floats, within
-from dec.audit.model import Model
+from dec.audit.given.model import Model
 from dec.audit.names import model_edge_names, vertex_names
 from dec.audit.verdict import Limits
 from dec.calculus.complex import Complex
@@ -79,8 +80,9 @@ class LoopRows(Sequence[dict[str, Any]]):
 
 
 def loop_rows(
-    network: Complex, model: Model, found: Closures, limits: Limits, rule: FloatArray | None = None
-) -> LoopRows:
+    network: Complex, model: Model, found: Closures, limits: Limits, rule: FloatArray | None = None,
+    common: csr_array | None = None,
+) -> LoopRows:  # fmt: skip
     """A basis of the loops, worst first, as rows for the record.
 
     Parameters
@@ -91,6 +93,8 @@ def loop_rows(
     limits : Limits
     rule : float64 array or None
         How far each loop of the basis may miss, where a preset says so.
+    common : csr_array, shape (m, k), or None
+        What one standard deviation of each common error adds to the readings.
 
     Returns
     -------
@@ -115,13 +119,23 @@ def loop_rows(
         holds = within(missed, found.places, limits.written or 0.0) if rule is None else np.abs(size) <= allowed
         order = np.argsort(-np.abs(size) / (1.0 if rule is None else allowed), kind="stable")
     else:
-        sd = np.sqrt(np.add.reduceat(readings.sd[edges] ** 2, ends[:kept])) if kept else np.zeros(0)
-        allowed, statistic = float(ndtri(1 - limits.alpha / 2)) * sd, np.abs(size) / sd
+        sd = _spread(readings.sd, edges, signs, ends[: kept + 1], common)
+        allowed, statistic = float(-ndtri(limits.alpha / 2)) * sd, np.abs(size) / sd
         holds, order = np.abs(size) <= allowed, np.argsort(-statistic, kind="stable")
     return LoopRows(
         network, model, worst[order] + 1, np.stack([ends[:-1], ends[1:]], axis=1)[order], edges, signs, size[order],
         sd[order], statistic[order], allowed[order], holds[order],
     )  # fmt: skip
+
+
+def _spread(sd: FloatArray, edges: IntArray, signs: SignArray, ends: IntArray, common: csr_array | None) -> FloatArray:
+    """Return the standard deviation of what each loop misses; a common error of two legs adds up or cancels."""
+    loop = np.repeat(np.arange(len(ends) - 1), np.diff(ends))
+    variance = np.bincount(loop, weights=sd[edges] ** 2, minlength=len(ends) - 1)
+    if common is not None:
+        legs = csr_array((signs.astype(np.float64), (loop, edges)), shape=(len(ends) - 1, len(sd)))
+        variance = variance + (legs @ common).power(2).sum(axis=1)
+    return np.asarray(np.sqrt(variance))
 
 
 def _held_ends(network: Complex, model: Model, edges: IntArray, signs: SignArray) -> list[str] | None:

@@ -9,7 +9,9 @@ from dec.arrays import IntArray, ObjectArray
 from dec.calculus.complex import Complex
 from dec.errors import InputError
 
-__all__ = ["NAMED", "counted", "edge_names", "few", "model_edge_names", "refuse_no_edges", "vertex_names"]
+__all__ = [
+    "NAMED", "close_names", "counted", "edge_names", "few", "model_edge_names", "refuse_no_edges", "vertex_names",
+]  # fmt: skip
 
 NAMED = 4
 _MOST_COMPARED = 20_000  # names among which a close one is looked for
@@ -34,6 +36,10 @@ def model_edge_names(network: Complex, vertex: IntArray, edges: IntArray) -> Obj
     vertex : int64 array
         Vertex of each such reading.
     edges : int64 array
+
+    Returns
+    -------
+    object array of str
     """
     own, n1 = edges < network.counts[1], network.counts[1]
     found = np.empty(len(edges), dtype=object)
@@ -64,10 +70,21 @@ def refuse_no_edges(network: Complex, asked: Sequence[str], sensors: Mapping[str
             "all its readings change together"
         )
         raise InputError(message)
-    close = difflib.get_close_matches(wrong, known, n=2) if len(known) <= _MOST_COMPARED else []
-    hint = f"close names: {', '.join(map(repr, close))}" if close else "edges are named by their ids as text"
+    hint = close_names(wrong, known) or "edges are named by their ids as text"
     message = f"what-if names {wrong!r}, which is no edge; {hint}"
     raise InputError(message)
+
+
+def close_names(wrong: str, known: Sequence[str]) -> str:
+    """Words on the two closest of the known names, for messages; empty where none is close, or above 20,000 of them.
+
+    Examples
+    --------
+    >>> close_names("P71", ["P17", "P2"])
+    "close names: 'P17'"
+    """
+    close = difflib.get_close_matches(wrong, known, n=2) if len(known) <= _MOST_COMPARED else []
+    return f"close names: {', '.join(map(repr, close))}" if close else ""
 
 
 def few(names: Iterable[str]) -> str:

@@ -9,15 +9,19 @@ import numpy as np
 from scipy.sparse import csr_array, vstack
 
 from dec.arrays import AnyArray, IntArray
-from dec.audit.adjustment import Adjustment
-from dec.audit.asked import Asked, unfit_preset
-from dec.audit.closures import closures
-from dec.audit.common_errors import common_errors
-from dec.audit.differences import adjust_differences
-from dec.audit.flows import adjust_flows, group_residuals
-from dec.audit.inseparable import difference_classes, flow_classes
+from dec.audit.adjusted.adjustment import Adjustment
+from dec.audit.adjusted.closures import closures
+from dec.audit.adjusted.differences import adjust_differences
+from dec.audit.adjusted.flows import adjust_flows, group_residuals
+from dec.audit.given.asked import Asked, unfit_preset
+from dec.audit.given.common_errors import CommonErrors, common_errors
+from dec.audit.given.model import Model, model_of
+from dec.audit.given.presets import Preset
+from dec.audit.given.readings import Known, Readings, known_at_vertices, named_vertices, read_readings, with_storage
+from dec.audit.given.repeat_tables import table_name
+from dec.audit.given.repeats import applied_notes, combined_readings
+from dec.audit.given.what_if import WhatIf
 from dec.audit.loop_rows import loop_rows
-from dec.audit.model import Model, model_of
 from dec.audit.names import counted, refuse_no_edges, vertex_names
 from dec.audit.network_tables import (
     at_vertex_columns,
@@ -27,9 +31,6 @@ from dec.audit.network_tables import (
     limit_columns,
     reading_columns,
 )
-from dec.audit.parts import part_rows
-from dec.audit.presets import Preset
-from dec.audit.readings import Known, Readings, known_at_vertices, named_vertices, read_readings, with_storage
 from dec.audit.record import Audit
 from dec.audit.remarks import (
     common_note,
@@ -41,16 +42,16 @@ from dec.audit.remarks import (
     self_loop_notes,
     supply_notes,
 )
-from dec.audit.repeat_tables import table_name
-from dec.audit.repeats import applied_notes, combined_readings
 from dec.audit.rules import chosen_rule, line_lengths, loop_allowances, meter_accuracy, vertex_allowances
-from dec.audit.suspects import Naming
-from dec.audit.testing import Tested, tested
+from dec.audit.tested.inseparable import difference_classes, flow_classes
+from dec.audit.tested.parts import part_rows
+from dec.audit.tested.suspects import Naming
+from dec.audit.tested.testing import Tested, tested
 from dec.audit.verdict import Limits, Verdict, judged, read_limits
 from dec.audit.vertex_rows import group_names, vertex_rows
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
-from dec.errors import InputError
+from dec.errors import AccuracyError, InputError
 
 __all__ = ["audit_differences", "audit_flows"]
 
@@ -61,12 +62,15 @@ _METHODS = {
     "deviations; edges not measured are left out",
 }
 
+_MOST_SHARED = 1e6  # beyond, squares of the common error keep fewer than four digits of a reading's own
+
 
 @dataclass(frozen=True, slots=True)
 class _Found:
-    """What both laws have found when the record is written."""
+    """What both laws have found when the record is written; `as_read` are the readings before any what-if."""
 
     network: Complex
+    as_read: Readings
     model: Model
     adjustment: Adjustment
     limits: Limits
@@ -74,12 +78,13 @@ class _Found:
     tests: Tested
 
 
-def audit_flows(net: Dataset, asked: Asked) -> Audit:
-    """Whether flows balance at every closed vertex; see `dec.balance`."""
+def audit_flows(net: Dataset, asked: Asked, as_read: Readings | None = None) -> Audit:
+    """Whether flows balance at every closed vertex; see `dec.balance`. Readings once read need no reading again."""
     network = net.complex
     limits, rule = read_limits(asked.alpha, asked.limit, asked.sd), chosen_rule(asked)
     _refuse_rule(rule, "balance")
-    readings = _readings(net, asked, rule)
+    as_read = as_read or _as_read(net, asked, rule)
+    readings = _supposed(net, asked.what_if, as_read)
     opened = named_vertices(net, asked.open, "open")
     known, opened, notes, said = _supplies(net, asked, opened)
     model = model_of(network, readings, known, opened, "supply")
@@ -93,28 +98,29 @@ def audit_flows(net: Dataset, asked: Asked) -> Audit:
     allowed = vertex_allowances(net, asked, rule, model, group, n_groups)
     verdict = judged(
         adjustment, model.readings, limits, residual[closed], places, None if allowed is None else allowed[closed],
-        _said_by(rule, "vertices"),
+        rule, "vertices",
     )  # fmt: skip
     naming = Naming(network, model, partial(_group_name, network, group), "supply", asked.unit)
     classes = partial(flow_classes, model, group, adjustment.evidence.testable)
     tests = tested(model, adjustment, classes, naming, asked, limits, balance=True)
-    rows, shown = vertex_rows(network, model, group, residual, places)
+    rows, shown = vertex_rows(network, model, group, residual, places, common)
     rows |= _fault_columns(tests, np.where(shown >= 0, len(model.tail) + shown, -1))
     judging = model.readings.sd is None and adjustment.dof > 0
     rows |= limit_columns(residual, places, shown, limits if judging else None, allowed if judging else None)
     rows["group"] = joint_names(network, group)
     notes = [*shared, *notes, *self_loop_notes(network, balance=True)]
     said = {"open": vertex_names(network, opened).tolist(), "supply": _said(asked.supply), **said}
-    found = _Found(network, model, contradictable(adjustment, readings), limits, verdict, tests)
+    found = _Found(network, as_read, model, contradictable(adjustment, readings), limits, verdict, tests)
     return _record("balance", net, found, rows, (), notes, asked, said)
 
 
-def audit_differences(net: Dataset, asked: Asked) -> Audit:
-    """Whether differences close round every loop; see `dec.loops`."""
+def audit_differences(net: Dataset, asked: Asked, as_read: Readings | None = None) -> Audit:
+    """Whether differences close round every loop; see `dec.loops`. Readings once read need no reading again."""
     network, n = net.complex, net.complex.counts[0]
     limits, rule = read_limits(asked.alpha, asked.limit, asked.sd), chosen_rule(asked)
     _refuse_rule(rule, "loop")
-    readings = _readings(net, asked, rule)
+    as_read = as_read or _as_read(net, asked, rule)
+    readings = _supposed(net, asked.what_if, as_read)
     known = None if asked.fixed is None else known_at_vertices(net, asked.fixed, "fixed", asked.fixed_sd)
     lengths = line_lengths(net, asked, rule, readings)
     model = model_of(network, readings, known, None, "fixed")
@@ -124,9 +130,8 @@ def audit_differences(net: Dataset, asked: Asked) -> Audit:
     common, notes = _common(net, asked, readings, model)
     adjustment = adjust_differences(model, found, common, asked.figures)
     allowed = loop_allowances(asked, rule, lengths, model, found)
-    loops = loop_rows(network, model, found, limits, allowed)
-    said_by = _said_by(rule, "loops")
-    verdict = judged(adjustment, model.readings, limits, found.misclosure, found.places, allowed, said_by)
+    loops = loop_rows(network, model, found, limits, allowed, common)
+    verdict = judged(adjustment, model.readings, limits, found.misclosure, found.places, allowed, rule, "loops")
     naming = Naming(network, model, partial(_vertex_name, network, model.attached), "potential", asked.unit)
     classes = partial(difference_classes, model, adjustment.evidence.testable)
     tests = tested(model, adjustment, classes, naming, asked, limits, balance=False)
@@ -154,7 +159,7 @@ def audit_differences(net: Dataset, asked: Asked) -> Audit:
         "fixed": vertex_names(network, np.flatnonzero(held)).tolist(),
         "fixed_sd": None if known is None else known.sd_said,
     }
-    found_all = _Found(network, model, contradictable(adjustment, readings), limits, verdict, tests)
+    found_all = _Found(network, as_read, model, contradictable(adjustment, readings), limits, verdict, tests)
     return _record("loop", net, found_all, rows, loops, notes, asked, said)
 
 
@@ -164,22 +169,22 @@ def _refuse_rule(rule: Preset | None, law: str) -> None:
         raise InputError(message)
 
 
-def _said_by(rule: Preset | None, what: str) -> tuple[str, str]:
-    return ("the limit" if rule is None else f"preset {rule.name}", what)
-
-
-def _readings(net: Dataset, asked: Asked, rule: Preset | None) -> Readings:
+def _as_read(net: Dataset, asked: Asked, rule: Preset | None) -> Readings:
     accuracy = meter_accuracy(asked, rule)
     if asked.readings is None:
-        readings = read_readings(net, asked.value, accuracy)
-    else:
-        readings = combined_readings(net, asked.readings, asked.value, accuracy, decimal=asked.decimal)
-    asked_of = [*asked.what_if.turned, *(asked.what_if.scaled or {}), *asked.what_if.left_out]
-    if asked_of:
-        rows = readings.repeats
+        return read_readings(net, asked.value, accuracy)
+    return combined_readings(net, asked.readings, asked.value, accuracy, decimal=asked.decimal)
+
+
+def _supposed(net: Dataset, what_if: WhatIf, as_read: Readings) -> Readings:
+    """Return the readings as they would be."""
+    names = [*what_if.turned, *(what_if.scaled or {}), *what_if.left_out]
+    if names:
+        rows = as_read.repeats
         sensors = {} if rows is None else dict(zip(rows.sensor.tolist(), rows.edge.tolist(), strict=True))
-        refuse_no_edges(net.complex, list(map(str, asked_of)), sensors)
-    return asked.what_if.applied(net.complex, readings)
+        sensors.pop("", None)  # a row without a sensor's name
+        refuse_no_edges(net.complex, list(map(str, names)), sensors)
+    return what_if.applied(net.complex, as_read)
 
 
 def _supplies(
@@ -207,8 +212,24 @@ def _common(net: Dataset, asked: Asked, readings: Readings, model: Model) -> tup
     moves = found.moves
     if not moves.shape[1]:
         return None, [f"column {asked.common} names no group with a reading: no error is shared"]
+    _refuse_dominant(found, readings)
     more = csr_array((len(model.tail) - moves.shape[0], moves.shape[1]))
     return csr_array(vstack([moves, more])), [common_note(found, readings)]
+
+
+def _refuse_dominant(found: CommonErrors, readings: Readings) -> None:
+    """Refuse common errors so large beside the readings' own that their squares hide these in double precision."""
+    assert readings.sd is not None
+    moved = found.moves.tocoo()
+    part = (moved.data / readings.sd[moved.coords[0]]) ** 2
+    size = np.sqrt(np.bincount(moved.coords[1], weights=part, minlength=len(found.names)))
+    if not size.max() <= _MOST_SHARED:
+        worst = int(np.argmax(size))
+        message = (
+            f"the common error of group {found.names[worst]!r} is {size[worst]:.1e} times the readings' own standard "
+            f"deviations, and double precision allows {_MOST_SHARED:.0e}; make common_sd smaller, or sd larger"
+        )
+        raise AccuracyError(message)
 
 
 def _group_name(network: Complex, group: IntArray, number: int) -> str:
@@ -282,7 +303,15 @@ def _record(
         tables, loops, tests.suspects, (*net.notes, *notes),
         not_shown(model, adjustment, tests, balance=balance, unit=asked.unit),
         question, f"{_METHODS[law]}; {adjustment.because}", network.cochain(1, adjustment.adjusted[:n1]), extra,
-        lambda what_if: again(replace(asked, what_if=what_if)),
+        lambda what_if: again(replace(asked, what_if=what_if), found.as_read), partial(_certificate, asked),
+    )  # fmt: skip
+
+
+def _certificate(asked: Asked, audit: Audit, *, contents: Sequence[bytes] = ()) -> bytes:
+    from dec.audit.certificate import audit_certificate
+
+    return audit_certificate(
+        audit, supply=asked.supply, storage=asked.storage, fixed=asked.fixed, contents=contents
     )  # fmt: skip
 
 

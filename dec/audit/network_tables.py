@@ -5,13 +5,13 @@ from dataclasses import replace
 import numpy as np
 
 from dec.arrays import AnyArray, FloatArray, IntArray, ObjectArray
-from dec.audit.adjustment import Adjustment
+from dec.audit.adjusted.adjustment import Adjustment
 from dec.audit.exactly import as_floats, within
-from dec.audit.model import Model
+from dec.audit.given.model import Model
+from dec.audit.given.readings import Readings, Repeats
 from dec.audit.names import edge_names, vertex_names
-from dec.audit.readings import Readings, Repeats
-from dec.audit.repeated_readings import reading_names, reading_statistics
-from dec.audit.testing import Tested
+from dec.audit.tested.repeated_readings import reading_names, reading_statistics
+from dec.audit.tested.testing import Tested
 from dec.audit.verdict import Limits
 from dec.audit.vertex_rows import group_names
 from dec.calculus.complex import Complex
@@ -70,6 +70,11 @@ def limit_columns(
         One for all.
     allowed : float64 array, shape (n_groups,), or None
         One for each, by a preset.
+
+    Returns
+    -------
+    dict
+        "limit": float64 array; "holds": object array of bool and None, or nan where there is no limit.
     """
     limit, seen = np.full(len(shown), np.nan), shown >= 0
     if allowed is None and (limits is None or limits.largest is None):

@@ -1,10 +1,13 @@
 """The adjusted values of an audit as a file: a table for a network, a mesh with results for a mesh."""
 
+from collections.abc import Mapping
 from pathlib import PurePath
 
 import numpy as np
 
 from dec.arrays import AnyArray, FloatArray
+from dec.audit.digits.rounding import Rounded
+from dec.audit.digits.tables import rounded_columns, rounded_vertex_columns
 from dec.audit.record import Audit
 from dec.calculus.dataset import Field
 from dec.errors import InputError
@@ -34,7 +37,7 @@ def refuse_ending(option: str, name: str, *, is_table: bool) -> None:
     raise InputError(message)
 
 
-def result_bytes(audit: Audit, name: str) -> bytes:
+def result_bytes(audit: Audit, name: str, digits: Rounded | None = None) -> bytes:
     """The results of an audit as the bytes of a file.
 
     Parameters
@@ -45,6 +48,8 @@ def result_bytes(audit: Audit, name: str) -> bytes:
         network with commas, where the adjusted values stand in a column of their own and the raw ones stay as read (of
         a table of readings: what they come to on the edge); ``.vtu`` the mesh with its fields and one value and limit a
         cell.
+    digits : Rounded or None
+        Adjusted values in whole units, which get columns of their own.
 
     Returns
     -------
@@ -58,7 +63,7 @@ def result_bytes(audit: Audit, name: str) -> bytes:
     on_network = "edges" in audit.tables
     refuse_ending("-o", name, is_table=on_network)
     if on_network:
-        return csv_bytes(_edge_columns(audit))
+        return csv_bytes(_edge_columns(audit, {} if digits is None else rounded_columns(digits)))
     return vtu_bytes(audit.data, [*_given_fields(audit), *_cell_fields(audit)])
 
 
@@ -88,7 +93,7 @@ def flow_bytes(solution: Solution) -> bytes:
     return csv_bytes(columns)
 
 
-def vertex_bytes(audit: Audit) -> bytes:
+def vertex_bytes(audit: Audit, digits: Rounded | None = None) -> bytes:
     """The vertices of a network audit as the bytes of a CSV table; columns without an entry are left out.
 
     Raises
@@ -99,8 +104,11 @@ def vertex_bytes(audit: Audit) -> bytes:
     if "vertices" not in audit.tables:
         message = "--vertices: an audit of a mesh has no table of vertices; use -o FILE.vtu"
         raise InputError(message)
-    table = audit.tables["vertices"]
-    return csv_bytes({name: column for name, column in table.items() if _has_entry(column)})
+    columns = dict(audit.tables["vertices"])
+    if digits is not None:
+        ((heading, rounded),) = (item for item in rounded_vertex_columns(digits).items() if item[0] != "id")
+        columns[heading] = np.array([*rounded, *[""] * (len(columns["id"]) - len(rounded))], dtype=object)
+    return csv_bytes({name: column for name, column in columns.items() if _has_entry(column)})
 
 
 def _has_entry(column: AnyArray) -> bool:
@@ -109,7 +117,7 @@ def _has_entry(column: AnyArray) -> bool:
     return not np.isnan(column).all()
 
 
-def _edge_columns(audit: Audit) -> dict[str, AnyArray]:
+def _edge_columns(audit: Audit, more: Mapping[str, AnyArray]) -> dict[str, AnyArray]:
     table = audit.tables["edges"]
     value = str(audit.asked["value"])
     columns: dict[str, AnyArray] = {key: table[key] for key in ("id", "from", "to")}
@@ -119,6 +127,8 @@ def _edge_columns(audit: Audit) -> dict[str, AnyArray]:
         columns[value] = raw.cells if raw.cells.dtype == object and raw.decimal == "." else table["value"]
     for key in ("sd", "adjusted", "adjusted_sd", "correction", "redundancy", "statistic", "detectable", "standing"):
         columns[key if key not in columns else f"audit_{key}"] = table[key]
+    for key, column in more.items():
+        columns[key if key not in columns else f"audit_{key}"] = column
     return columns
 
 

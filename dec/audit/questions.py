@@ -3,7 +3,7 @@
 from collections.abc import Iterable, Mapping
 from typing import Any
 
-from dec.audit.asked import ALPHA, Asked
+from dec.audit.given.asked import ALPHA, Asked
 from dec.audit.network import audit_differences, audit_flows
 from dec.audit.record import Audit
 from dec.calculus.dataset import Dataset

@@ -7,8 +7,8 @@ from html import escape
 from typing import TYPE_CHECKING, Any
 
 from dec.arrays import AnyArray
+from dec.audit.given.what_if import WhatIf
 from dec.audit.rows import Rows, largest_coordinate, plain, shown_rows, standing_counts
-from dec.audit.what_if import WhatIf
 from dec.calculus.cochain import Cochain
 from dec.calculus.dataset import Dataset, Input
 from dec.errors import InputError
@@ -24,7 +24,7 @@ _TABLES = ("edges", "vertices", "at_vertices", "readings", "faces", "cells", "bo
 
 @dataclass(frozen=True, slots=True)
 class Suspect:
-    """An edge or vertex whose own test stands out.
+    """An error at an edge, at a vertex or in one reading whose own test stands out.
 
     Attributes
     ----------
@@ -32,9 +32,10 @@ class Suspect:
         "edge", "vertex", "reading" (one of several of an edge), or "supply" or "potential" (a reading at a vertex).
     id : str
     statistic : float
-        Size of its correction in its own standard deviations.
+        Size of the error that it would be, in the standard deviations of that.
     estimate : float
-        What everything else says the value is.
+        What everything else says the value is. Of kind "vertex" the error itself: what leaves there unseen, or by how
+        much a held potential is too high.
     inseparable_from : tuple of (kind, id)
         What no reading can tell apart from it.
     hint : str or None
@@ -72,7 +73,8 @@ class Audit:
         Independent checks.
     chi_square, limit, p_value : float or None
     tables : mapping of str to mapping of str to array
-        Columns of "edges" and "vertices", or of "faces", "cells", "boundaries" and "holes" on a mesh.
+        Columns of "edges" and "vertices", where there are any also of "at_vertices" (readings at vertices) and
+        "readings" (rows of a table of them); or of "faces", "cells", "boundaries" and "holes" on a mesh.
     loops : sequence of mapping
         Loops of a network, worst first.
     suspects : tuple of Suspect
@@ -85,6 +87,8 @@ class Audit:
         Best consistent values; nan where a value does not follow.
     again : function of a WhatIf, or None
         Audits a network anew with other readings.
+    certifier : function of an Audit, or None
+        Makes its certificate.
     extra : mapping
         Figures beside the common ones; ``closes_to`` on a network: the largest amount by which adjusted values miss the
         law, over the largest value.
@@ -108,6 +112,7 @@ class Audit:
     adjusted: Cochain | None = None
     extra: Mapping[str, Any] = field(default_factory=dict)
     again: "Callable[[WhatIf], Audit] | None" = field(default=None, repr=False)
+    certifier: "Callable[..., bytes] | None" = field(default=None, repr=False)
 
     def what_if(
         self, turned: Iterable[str] = (), scaled: Mapping[str, Any] | None = None, left_out: Iterable[str] = ()
@@ -146,6 +151,30 @@ class Audit:
             raise InputError(message)
         return self.again(WhatIf.of(turned, scaled, left_out))
 
+    def certify(self, *, contents: Sequence[bytes] = ()) -> bytes:
+        """The certificate of a network audit as the bytes of a file, for ``dec verify``.
+
+        Parameters
+        ----------
+        contents : sequence of bytes
+            The input files, in the order of `inputs`: with them a changed line is named.
+
+        Raises
+        ------
+        InputError
+            If the audit is one of a mesh, or of readings as they are not.
+        """
+        if self.certifier is None:
+            message = "certificates are made of an audit of a network column, not of a mesh field"
+            raise InputError(message)
+        return self.certifier(self, contents=contents)
+
+    @property
+    def certificate(self) -> dict[str, Any]:
+        """The certificate as plain Python objects; see `certify`."""
+        found: dict[str, Any] = json.loads(self.certify())
+        return found
+
     @property
     def inputs(self) -> tuple[Input, ...]:
         """The files read, with their hashes."""
@@ -162,7 +191,12 @@ class Audit:
         return self._frame("vertices")
 
     def table(self, name: str) -> "pd.DataFrame":
-        """Any table of the audit as a frame: "edges", "vertices", "faces", "cells", "boundaries", "holes".
+        """Any table of the audit as a frame: "edges", "vertices", "at_vertices", "readings", or one of a mesh.
+
+        Parameters
+        ----------
+        name : str
+            Of a mesh: "faces", "cells", "boundaries" or "holes".
 
         Raises
         ------

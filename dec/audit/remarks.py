@@ -3,17 +3,16 @@
 import numpy as np
 
 from dec.arrays import BoolArray, IntArray
-from dec.audit.adjustment import Adjustment
-from dec.audit.asked import Asked
-from dec.audit.common_errors import CommonErrors
-from dec.audit.deviations import percentage
-from dec.audit.evidence import LOUDEST_PLACES, Evidence
-from dec.audit.flows import MOST_SPREAD_WORK
-from dec.audit.model import Model
+from dec.audit.adjusted.adjustment import MOST_INFERRED_WORK, Adjustment
+from dec.audit.adjusted.evidence import LOUDEST_PLACES, Evidence
+from dec.audit.given.asked import Asked
+from dec.audit.given.common_errors import CommonErrors
+from dec.audit.given.deviations import percentage
+from dec.audit.given.model import Model
+from dec.audit.given.readings import Readings
 from dec.audit.names import NAMED, counted, edge_names, few, vertex_names
-from dec.audit.readings import Readings
-from dec.audit.single_errors import LEADING
-from dec.audit.testing import Tested
+from dec.audit.tested.single_errors import LEADING
+from dec.audit.tested.testing import Tested
 from dec.calculus.complex import Complex
 from dec.report.wording import number
 
@@ -26,8 +25,8 @@ __all__ = [
 def common_note(found: CommonErrors, readings: Readings) -> str:
     """A note on the errors that readings share: how many readings, which groups, and the size."""
     moved = np.diff(found.moves.indptr) > 0
-    number = int(moved.sum()) if readings.repeats is None else int(moved[readings.repeats.edge].sum())
-    said = counted(number, "reading", "readings")
+    n_moved = int(moved.sum()) if readings.repeats is None else int(moved[readings.repeats.edge].sum())
+    said = counted(n_moved, "reading", "readings")
     groups = f"{counted(len(found.names), 'group', 'groups')} ({few(found.names)})"
     return f"{said} in {groups} share one error a group beside their own: {found.said}"
 
@@ -83,6 +82,11 @@ def datum_notes(network: Complex, fixed: BoolArray, reached: IntArray) -> list[s
     fixed : bool array, shape (n0,)
     reached : int64 array, shape (n0,)
         Part of each vertex: what measured edges join, the fixed vertices taken as one.
+
+    Returns
+    -------
+    list of str
+        Empty where every part has one.
     """
     if not fixed.any():
         return ["no potential is fixed: in each part the lowest-numbered vertex is taken as 0, only differences count"]
@@ -107,9 +111,9 @@ def general_notes(network: Complex, model: Model, adjustment: Adjustment, tests:
     elif adjustment.adjusted_sd is not None and (
         np.isnan(adjustment.adjusted_sd) & (adjustment.standing == "inferred")
     ).any():  # fmt: skip
-        notes.append(f"standard deviations of inferred values are left out: more than {MOST_SPREAD_WORK:,} steps")
+        notes.append(f"standard deviations of inferred values are left out: more than {MOST_INFERRED_WORK:,} steps")
     if model.readings.sd is not None and not tests.is_all:
-        notes += _left_out_notes(tests, adjustment.evidence)
+        notes += _left_out_notes(tests, adjustment.evidence, balance=adjustment.potential is None)
     for word, of_one, of_many in (
         ("unchecked", "measured, but nothing can contradict it", "measured, but nothing can contradict them"),
         ("unknown", "not measured, and its value does not follow from the others",
@@ -122,7 +126,7 @@ def general_notes(network: Complex, model: Model, adjustment: Adjustment, tests:
     return notes
 
 
-def _left_out_notes(tests: Tested, evidence: Evidence) -> list[str]:
+def _left_out_notes(tests: Tested, evidence: Evidence, *, balance: bool) -> list[str]:
     """Notes on single tests that were not made, or estimated."""
     if evidence.diagonal is not None and not tests.relative_error:
         hidden = evidence.testable & np.isnan(evidence.diagonal)
@@ -136,9 +140,10 @@ def _left_out_notes(tests: Tested, evidence: Evidence) -> list[str]:
             notes.append(f"{loud}; tests of {places} more are left out, each would take a solve")
         return notes
     if tests.relative_error:
+        of = "them" if balance else "what a redundancy lacks to 1"
         says = (
             f"redundancies and tests of single edges are estimated by random projection, with a standard error of "
-            f"{tests.relative_error:.0%}; the suspects' are exact"
+            f"{tests.relative_error:.0%} of {of}; the suspects' are exact"
         )
     else:
         says = (
@@ -158,7 +163,9 @@ def not_shown(
     if np.isfinite(own).any():
         middle, largest = (_size(float(found), unit) for found in (np.nanmedian(own), np.nanmax(own)))
         sizes = middle if middle == largest else f"median {middle}, largest {largest}"
-        texts[0] += f", and errors smaller than the detectable size of each edge ({sizes})"
+        n_own, n_checked = int(np.isfinite(own).sum()), int((adjustment.standing[: model.n_edges] == "checked").sum())
+        of = "" if tests.is_all or n_own >= n_checked else f"; worked out for {n_own:,} of {n_checked:,}"
+        texts[0] += f", and errors smaller than the detectable size of each edge ({sizes}{of})"
     if (adjustment.standing[: model.n_edges] == "unchecked").any():
         texts.append("errors of unchecked edges, however large")
     if not model.measured[: model.n_edges].all():

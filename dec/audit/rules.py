@@ -5,12 +5,12 @@ from collections.abc import Callable
 import numpy as np
 
 from dec.arrays import FloatArray, IntArray
-from dec.audit.asked import Asked
-from dec.audit.closures import Closures
-from dec.audit.model import Model
+from dec.audit.adjusted.closures import Closures
+from dec.audit.given.asked import Asked
+from dec.audit.given.model import Model
+from dec.audit.given.presets import Preset, kilometres, loop_limits, meter_class, preset, vertex_limits
+from dec.audit.given.readings import Readings
 from dec.audit.names import edge_names
-from dec.audit.presets import Preset, kilometres, loop_limits, meter_class, preset, vertex_limits
-from dec.audit.readings import Readings
 from dec.calculus.columns import reads_as_number
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError
@@ -37,6 +37,9 @@ def chosen_rule(asked: Asked) -> Preset | None:
         figure, _, text = change.partition("=")
         if not reads_as_number(text):
             message = f"a figure of a preset is set as figure=number, got {change!r}"
+            raise InputError(message)
+        if figure.strip() in figures:
+            message = f"preset {name.strip()} is given {figure.strip()} twice; set each figure once"
             raise InputError(message)
         figures[figure.strip()] = float(text)
     return preset(name.strip(), **figures)

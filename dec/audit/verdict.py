@@ -8,9 +8,10 @@ import numpy as np
 from scipy.special import chdtrc, chdtri
 
 from dec.arrays import AnyArray, FloatArray, float_array
-from dec.audit.adjustment import Adjustment
+from dec.audit.adjusted.adjustment import Adjustment
 from dec.audit.exactly import as_floats, within
-from dec.audit.readings import Readings
+from dec.audit.given.preset_table import Preset
+from dec.audit.given.readings import Readings
 from dec.calculus.columns import reads_as_number
 from dec.errors import InputError
 
@@ -86,7 +87,7 @@ def read_limits(alpha: object, limit: object, sd: object) -> Limits:
 
 def judged(
     adjustment: Adjustment, readings: Readings, limits: Limits, residuals: AnyArray, places: int,
-    allowed: FloatArray | None = None, said_by: tuple[str, str] = ("the preset", "residuals"),
+    allowed: FloatArray | None, rule: Preset | None, what: str,
 ) -> Verdict:  # fmt: skip
     """Whether the law holds: by chi-square with standard deviations, else by the residuals as written.
 
@@ -101,8 +102,10 @@ def judged(
     places : int
     allowed : float64 array or None
         How far each may miss, by a rule.
-    said_by : tuple of str
-        What that rule is called, and what it judges: vertices, or loops.
+    rule : Preset or None
+        That rule.
+    what : "vertices" or "loops"
+        What the residuals are of.
 
     Returns
     -------
@@ -117,11 +120,11 @@ def judged(
     if readings.sd is not None:
         quantile = float(chdtri(dof, limits.alpha))
         return Verdict(chi_square <= quantile, chi_square, quantile, float(chdtrc(dof, chi_square)))
-    if allowed is not None:
+    if allowed is not None and rule is not None:
         beyond = np.abs(as_floats(residuals, places)) > allowed
         where, count = "outside" if beyond.any() else "within", int(beyond.sum())
         exceed = "exceeds its own" if count == 1 else "exceed theirs"
-        words = f"{where} the limits of {said_by[0]}: {count} of {len(beyond)} {said_by[1]} {exceed}"
+        words = f"{where} the limits of preset {rule.name}: {count} of {len(beyond)} {what} {exceed}"
         return Verdict(not beyond.any(), None, None, None, words)
     allowed_all = limits.written or Fraction(0)
     return Verdict(bool(within(residuals, places, allowed_all).all()), None, limits.largest or 0.0, None)

@@ -1,18 +1,20 @@
 """The vertex table of a balance: what goes in and does not come out."""
 
 import numpy as np
+from scipy.sparse import csr_array
 
 from dec.arrays import AnyArray, BoolArray, FloatArray, IntArray, ObjectArray
 from dec.audit.exactly import as_floats
-from dec.audit.model import Model
+from dec.audit.given.model import Model
 from dec.audit.names import NAMED, vertex_names
 from dec.calculus.complex import Complex
+from dec.topology.edges import edge_coboundary
 
 __all__ = ["group_names", "vertex_rows"]
 
 
 def vertex_rows(
-    network: Complex, model: Model, group: IntArray, residual: AnyArray, places: int
+    network: Complex, model: Model, group: IntArray, residual: AnyArray, places: int, common: csr_array | None = None
 ) -> tuple[dict[str, AnyArray], IntArray]:
     """Columns of the vertex table, and the group that each row shows.
 
@@ -25,6 +27,8 @@ def vertex_rows(
     residual : int64 or object array, shape (n_groups,)
         In units of 10**-places.
     places : int
+    common : csr_array, shape (m, k), or None
+        What one standard deviation of each common error adds to the readings.
 
     Returns
     -------
@@ -42,7 +46,7 @@ def vertex_rows(
     at = np.concatenate([own, together])
     shown = np.concatenate([((size == 1) & closed)[own], np.ones(len(together), dtype=bool)])
     value = np.where(shown, as_floats(residual, places)[at], np.nan)
-    spread = _spread(model, group, n_groups)[at]
+    spread = _spread(model, group, n_groups, common)[at]
     sd = np.where(shown & (spread > 0), spread, np.nan)
     nothing = np.full(len(at), np.nan)
     columns = {
@@ -61,6 +65,10 @@ def group_names(network: Complex, group: IntArray, chosen: IntArray) -> ObjectAr
     group : int64 array, shape (n_vertices,)
         The last is the outside, which has no name.
     chosen : int64 array
+
+    Returns
+    -------
+    object array of str, shape of `chosen`
     """
     own = group[: network.counts[0]]
     members = np.argsort(own, kind="stable")
@@ -76,7 +84,7 @@ def group_names(network: Complex, group: IntArray, chosen: IntArray) -> ObjectAr
     return np.array(names, dtype=object)
 
 
-def _spread(model: Model, group: IntArray, n_groups: int) -> FloatArray:
+def _spread(model: Model, group: IntArray, n_groups: int, common: csr_array | None) -> FloatArray:
     """Return the standard deviation of each group's residual, 0 where no measured edge crosses or none was given."""
     if model.readings.sd is None:
         return np.zeros(n_groups)
@@ -84,4 +92,7 @@ def _spread(model: Model, group: IntArray, n_groups: int) -> FloatArray:
     crossing: BoolArray = model.measured & (start != end)
     variance = np.where(crossing, model.sd, 0.0) ** 2
     both = np.concatenate([start, end])
-    return np.sqrt(np.bincount(both, weights=np.concatenate([variance, variance]), minlength=n_groups))
+    total = np.bincount(both, weights=np.concatenate([variance, variance]), minlength=n_groups)
+    if common is not None:  # what enters and leaves with one error cancels
+        total = total + (edge_coboundary(start, end, n_groups).T.astype(np.float64) @ common).power(2).sum(axis=1)
+    return np.sqrt(total)

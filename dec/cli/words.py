@@ -4,8 +4,9 @@ import argparse
 from collections.abc import Callable
 from typing import Any, NoReturn
 
+from dec.cli.audits import balance_verb, loops_verb
 from dec.cli.codes import UsageError
-from dec.cli.verbs import balance_verb, check_verb, demo_verb, loops_verb, presets_verb, solve_verb
+from dec.cli.verbs import check_verb, demo_verb, presets_verb, solve_verb, verify_verb
 
 __all__ = ["parser"]
 
@@ -36,7 +37,8 @@ def parser(as_json: bool) -> argparse.ArgumentParser:
     check = _verb(verbs, "check", check_verb, "is it sound, and what can be checked with it?",
                   "dec check meshes/bracket.stl\n  dec check pipes.csv --nodes nodes.csv")  # fmt: skip
     check.add_argument("file", metavar="FILE", help="edge table or mesh; - reads a table from standard input")
-    _common(check, writes=False)
+    _certified(check)
+    _common(check)
 
     balance = _verb(verbs, "balance", balance_verb, "do the flows add up?",
                     "dec balance pipes.csv --nodes nodes.csv --value flow --sd 2%+0.05 --open R1\n"
@@ -45,6 +47,7 @@ def parser(as_json: bool) -> argparse.ArgumentParser:
     network.add_argument("--open", metavar="ID", action="append", help="vertex open to the outside; may be repeated")
     network.add_argument("--open-column", metavar="COL", help="yes-or-no node column that says which vertices are open")
     network.add_argument("--supply", metavar="COL", help="node column of what is put in (taken out: negative)")
+    network.add_argument("--round-supplies", action="store_true", help="with --digits: supplies may be rounded too")
     network.add_argument("--supply-sd", metavar="SD", help="how well it is known, as --sd; 0 or empty is exactly")
     network.add_argument("--storage", metavar="COL", help="node column of what is kept back there meanwhile")
     network.add_argument("--storage-sd", metavar="SD", help="how well that is known, as --sd; 0 or empty is exactly")
@@ -80,9 +83,15 @@ def parser(as_json: bool) -> argparse.ArgumentParser:
         "--unbalanced", choices=("refuse", "spread"), default="refuse", help="what to do with a surplus (refuse)"
     )
     solve.add_argument("--why", action="store_true", help="say why the method was chosen")
+    _certified(solve)
     solve.add_argument("-o", dest="output", metavar="FILE", help="write flows and end potentials (csv); - prints them")
     _common(solve)
 
+    verify = _verb(verbs, "verify", verify_verb, "recheck a result without trusting the program that made it",
+                   "dec verify audit.json pipes.csv nodes.csv")  # fmt: skip
+    verify.add_argument("certificate", metavar="CERTIFICATE", help="file that --certificate wrote")
+    verify.add_argument("files", metavar="FILE", nargs="*", help="the inputs; else they are looked for beside it")
+    _shared(verify, writes=False)
     presets = _verb(verbs, "presets", presets_verb, "what --preset knows by name, with sources", "dec presets")
     _shared(presets, writes=False)
     demo = _verb(verbs, "demo", demo_verb, "the main job on the built-in example", "dec demo\n  dec demo harrowmere")
@@ -156,8 +165,14 @@ def _audited(verb: argparse.ArgumentParser) -> argparse._ArgumentGroup:
         "-o", dest="output", metavar="FILE", help="write the adjusted table (csv) or mesh (vtu); - prints the table"
     )
     verb.add_argument("--vertices", metavar="FILE", help="network: write the table of vertices (csv); - prints it")
+    network.add_argument("--digits", metavar="UNIT", help="round adjusted values to whole units so that they add up")
+    _certified(verb)
     _common(verb)
     return network
+
+
+def _certified(verb: argparse.ArgumentParser) -> None:
+    verb.add_argument("--certificate", metavar="FILE", help="write what dec verify needs to recheck the result")
 
 
 def _probability(text: str) -> float:

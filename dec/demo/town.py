@@ -24,6 +24,7 @@ if TYPE_CHECKING:
 __all__ = ["Town", "main", "town"]
 
 _SMALLEST, _LARGEST, _SMALLEST_ZONE = 200, 10_000_000, 40
+_LARGEST_SIZE = 1e6
 _LOUD = 0.8  # meters that are faulty stand on pipes that carry more than this share of all pipes
 # Thousandths of L/s, of metres and of the readings' unit, all whole numbers
 _FLOW_FLOOR, _FLOW_SHARE = 50, 0.01
@@ -103,6 +104,12 @@ def town(
     (200, (('reversed', 'P140'),))
     """
     _refuse_unfit(n_edges, zones, unmetered, (reversed_meters, factor_meters, leaks))
+    if seed < 0 or not 0 < abs(factor) <= _LARGEST_SIZE or not abs(leak) <= _LARGEST_SIZE:
+        message = (
+            f"seed must be 0 or more, a factor not 0, a factor and a leak within {_LARGEST_SIZE:g}, got {seed}, "
+            f"{factor:g} and {leak:g}"
+        )
+        raise InputError(message)
     layout, faults, noise = (np.random.default_rng([seed, part]) for part in range(3))
     streets = laid_out(n_edges, zones, layout)
     n, is_open = len(streets.points), np.zeros(len(streets.points), dtype=bool)

@@ -118,18 +118,16 @@ def part_sentences(result: Mapping[str, Any]) -> list[str]:
     lines = []
     for part in parts[:_NAMED]:
         word = {True: "holds", False: "does NOT hold", None: "nothing to check"}[part["holds"]]
+        checks, figure = _counted(part["dof"], "check"), ""
         if part["holds"] is None and part["dof"]:
-            word = f"{part['dof']} checks"
-        figure = (
-            ""
-            if part["limit"] is None
-            else (
-                f": chi-square {number(part['chi_square'], 4)}, limit {number(part['limit'], 4)}, {part['dof']} checks"
-            )
-        )
-        lines.append(f"{visible(part['part'])} and {part['vertices'] - 1} more: {word}{figure}")
+            word = checks
+        if part["limit"] is not None:
+            figure = f": chi-square {number(part['chi_square'], 4)}, limit {number(part['limit'], 4)}, {checks}"
+        more = f" and {part['vertices'] - 1:,} more" if part["vertices"] > 1 else ""
+        lines.append(f"{visible(part['part'])}{more}: {word}{figure}")
     if len(parts) > _NAMED:
-        lines.append(f"and {result['counts']['components'] - _NAMED} more parts in --json")
+        listed = "" if len(parts) == result["counts"]["components"] else f", the worst {len(parts):,} of them"
+        lines.append(f"and {_counted(result['counts']['components'] - _NAMED, 'more part')} in --json{listed}")
     return lines
 
 

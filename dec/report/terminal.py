@@ -22,7 +22,7 @@ from dec.report.suspicion import (
 )
 from dec.report.wording import checked_sentence, number, verdict_sentence, visible
 
-__all__ = ["SHOWN", "audit_view", "check_view", "presets_view", "solve_view"]
+__all__ = ["SHOWN", "audit_view", "check_view", "presets_view", "solve_view", "verify_view"]
 
 _ROWS = 8
 SHOWN = 20  # rows of each table that a view needs: more than its own, and all edges that are suspects
@@ -90,6 +90,15 @@ def check_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
         table.add_row(mark, visible(finding["name"]), against, _places(finding["where"]))
     yield table
     yield from _remarks("note", result["notes"])
+
+
+def verify_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
+    """A recheck for reading: whether everything fits, what was looked at, and what a recheck cannot show."""
+    word = "HOLDS" if result["holds"] else "DOES NOT HOLD"
+    yield Text(f"certificate of law {visible(result['law'])}  ").append(word, _STYLE[result["holds"]])
+    yield from _remarks("problem", result["problems"])
+    yield from _remarks("checked", result["checked"])
+    yield from _remarks("not shown", result["not_shown"])
 
 
 def presets_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:

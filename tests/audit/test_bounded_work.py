@@ -1,11 +1,14 @@
 """Where a network is too large for every figure: what is left out, what stays exact, and that it is said."""
 
+from dataclasses import replace
+
 import numpy as np
 import pandas as pd
 import pytest
 
-from dec.audit.laplacian import Laplacian
+from dec.audit.adjusted.laplacian import Laplacian
 from dec.audit.questions import balance, loops
+from dec.audit.tested.single_errors import single_errors
 from dec.calculus.dataset import Dataset
 
 
@@ -26,8 +29,8 @@ def held_grid(side: int, seed: int) -> tuple[Dataset, dict[int, float]]:
 def test_of_very_many_held_values_the_loudest_are_tested_and_the_others_left_out(monkeypatch):
     net, fixed = held_grid(9, 1)
     whole = loops(net, "y", sd=0.01, fixed=fixed)
-    monkeypatch.setattr("dec.audit.evidence._MOST_PLACE_WORK", 0)
-    monkeypatch.setattr("dec.audit.evidence.LOUDEST_PLACES", 5)
+    monkeypatch.setattr("dec.audit.adjusted.evidence._MOST_PLACE_WORK", 0)
+    monkeypatch.setattr("dec.audit.adjusted.evidence.LOUDEST_PLACES", 5)
     cut = loops(net, "y", sd=0.01, fixed=fixed)
     every, some = whole.vertices["fault_statistic"].to_numpy(), cut.vertices["fault_statistic"].to_numpy()
     assert np.isfinite(every).sum() > 30
@@ -45,8 +48,8 @@ def test_shares_that_rounding_hides_are_left_out_where_there_are_too_many_to_wor
     tail, head = rng.integers(0, 30, 90), rng.integers(0, 30, 90)
     conductance = 10.0 ** rng.uniform(-6, 6, 90)
     true = Laplacian(tail, head, 30, conductance).shares()
-    monkeypatch.setattr("dec.audit.laplacian._MOST_AGAIN", 3)
-    monkeypatch.setattr("dec.audit.laplacian._HOPELESS", 1e-9)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian._MOST_AGAIN", 3)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian._HOPELESS", 1e-9)
     share, slack = Laplacian(tail, head, 30, conductance).shares()
     hidden = np.isnan(slack)
     assert 0 < hidden.sum() < 90
@@ -57,8 +60,8 @@ def test_shares_that_rounding_hides_are_left_out_where_there_are_too_many_to_wor
 
 @pytest.mark.parametrize("law", [balance, loops])
 def test_an_audit_with_hidden_shares_says_so_and_goes_on(monkeypatch, law):
-    monkeypatch.setattr("dec.audit.laplacian._MOST_AGAIN", 0)
-    monkeypatch.setattr("dec.audit.laplacian._HOPELESS", 1e-12)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian._MOST_AGAIN", 0)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian._HOPELESS", 1e-12)
     rng = np.random.default_rng(3)
     frame = pd.DataFrame({
         "from": rng.integers(0, 12, 40), "to": rng.integers(0, 12, 40), "y": np.round(rng.normal(size=40), 3),
@@ -73,7 +76,7 @@ def test_an_audit_with_hidden_shares_says_so_and_goes_on(monkeypatch, law):
 def test_the_search_for_several_errors_chooses_among_the_loudest(monkeypatch):
     net, fixed = held_grid(9, 4)
     whole = loops(net, "y", sd=0.01, fixed=fixed).extra["errors"]
-    monkeypatch.setattr("dec.audit.several_errors._POOL", 12)
+    monkeypatch.setattr("dec.audit.tested.several_errors._POOL", 12)
     assert loops(net, "y", sd=0.01, fixed=fixed).extra["errors"] == whole
 
 
@@ -84,8 +87,9 @@ def test_estimated_figures_come_with_their_error_and_exact_suspects(monkeypatch)
     exact = loops(net, "y", sd=0.01, fixed=held)
     monkeypatch.setattr("dec.solvers.choice.SMALL", 10)
     monkeypatch.setattr("dec.solvers.choice.MIDDLING", 10)
-    monkeypatch.setattr("dec.audit.laplacian.sparse_order", lambda *_: None)
-    monkeypatch.setattr("dec.audit.single_errors.LEADING", 30)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian.sparse_order", lambda *_: None)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian._SMALL", 0)
+    monkeypatch.setattr("dec.audit.tested.single_errors.LEADING", 30)
     rough = loops(net, "y", sd=0.01, fixed=held, figures="estimate")
     assert any("standard error of 10%" in note for note in rough.notes)
     one, other = exact.edges["redundancy"].to_numpy(), rough.edges["redundancy"].to_numpy()
@@ -98,3 +102,42 @@ def test_estimated_figures_come_with_their_error_and_exact_suspects(monkeypatch)
     every = loops(net, "y", sd=0.01, fixed=held, figures="all")
     assert every.edges["redundancy"].to_numpy() == pytest.approx(one, abs=1e-9)
     assert every.edges["statistic"].to_numpy() == pytest.approx(exact.edges["statistic"].to_numpy(), abs=1e-6)
+
+
+def test_as_many_errors_as_are_looked_at_one_by_one_are_all_of_them(monkeypatch):
+    net, fixed = held_grid(6, 4)
+    evidence = []
+    monkeypatch.setattr(
+        "dec.audit.tested.testing.single_errors", lambda found: evidence.append(found) or single_errors(found)
+    )
+    loops(net, "y", sd=0.01, fixed=fixed)
+    without = replace(evidence[0], diagonal=None)
+    count = int(without.testable.sum())
+    for most, is_all in ((count + 1, True), (count, True), (count - 1, False)):
+        monkeypatch.setattr("dec.audit.tested.single_errors.LEADING", most)
+        found = single_errors(without)
+        assert (found.is_all, len(found.error)) == (is_all, min(most, count))
+
+
+def test_of_the_loudest_alone_nothing_is_said_of_chance_and_the_sizes_say_of_how_many_they_are(monkeypatch):
+    net, fixed = held_grid(12, 5)
+    held = {v: h for v, h in fixed.items() if v in (0, 8, 143 - 1)}
+    monkeypatch.setattr("dec.solvers.choice.SMALL", 10)
+    monkeypatch.setattr("dec.solvers.choice.MIDDLING", 10)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian.sparse_order", lambda *_: None)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian._SMALL", 0)
+    monkeypatch.setattr("dec.audit.tested.single_errors.LEADING", 30)
+    cut = loops(net, "y", sd=0.01, fixed=held)
+    checked = int((cut.edges["standing"] == "checked").sum())
+    seen = int(np.isfinite(cut.edges["detectable"]).sum())
+    assert 0 < seen <= 30 < checked
+    assert cut.extra["chance"] is None
+    assert f"worked out for {seen} of {checked})" in cut.not_shown[0]
+    whole = loops(net, "y", sd=0.01, fixed=held, figures="estimate")
+    assert "worked out for" not in whole.not_shown[0]
+    chance = whole.extra["chance"]
+    assert chance["tests"] == len(set(whole.edges["class"]) | set(whole.vertices["class"])) - 1
+    loud = {*whole.edges["class"][whole.edges["statistic"] > chance["limit"]]}
+    loud |= {*whole.vertices["class"][whole.vertices["fault_statistic"] > chance["limit"]]}
+    assert chance["exceed"] == len(loud)
+    assert any("10% of what a redundancy lacks to 1" in note for note in whole.notes)

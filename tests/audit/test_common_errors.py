@@ -5,9 +5,10 @@ import pandas as pd
 import pytest
 from scipy.sparse import csr_array
 
-from dec.audit.common_errors import common_errors
-from dec.audit.readings import read_readings
-from dec.audit.repeats import combined_readings
+from dec.audit.given.common_errors import common_errors
+from dec.audit.given.readings import read_readings
+from dec.audit.given.repeats import combined_readings
+from dec.audit.questions import balance, loops
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError
 
@@ -110,3 +111,24 @@ def test_common_errors_that_cannot_be_meant_are_refused(net: Dataset, column: st
     with pytest.raises(InputError) as caught:
         common_errors(net, read_readings(net, "y", 1), column, sd)
     assert says in str(caught.value)
+
+
+def test_what_a_vertex_or_a_loop_misses_is_as_unsure_as_its_common_errors_make_it():
+    """By hand, variances 0.01 each and a common error of 1: two along it add 2^2, one against the other nothing."""
+    rows = [
+        ("S", "J", "5", "x"),
+        ("R", "J", "5", "x"),
+        ("J", "T", "8.4", ""),
+        ("S", "K", "5", "x"),
+        ("K", "T", "5", "x"),
+    ]
+    net = Dataset.from_frames(pd.DataFrame(rows, columns=["from", "to", "y", "crew"]))
+    table = balance(net, "y", 0.1, open=["S", "R", "T"], common="crew", common_sd=1.0).vertices.set_index("id")
+    assert table["sd"][["J", "K"]].tolist() == pytest.approx([np.sqrt(0.03 + 4), np.sqrt(0.02)])
+    assert table["statistic"]["J"] == pytest.approx(1.6 / np.sqrt(0.03 + 4))
+    around = [("A", "B", "5", "x"), ("B", "C", "5", "x"), ("A", "C", "8.4", "")]
+    net = Dataset.from_frames(pd.DataFrame(around, columns=["from", "to", "y", "crew"]))
+    audit = loops(net, "y", 0.1, common="crew", common_sd=1.0)
+    assert audit.loops[0]["sd"] == pytest.approx(np.sqrt(0.03 + 4))
+    assert audit.loops[0]["statistic"] ** 2 == pytest.approx(audit.chi_square)  # one loop, so it is the whole test
+    assert (audit.loops[0]["holds"], audit.holds) == (True, True)

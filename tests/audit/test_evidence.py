@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from dec.audit import network
-from dec.audit.evidence import Evidence
+from dec.audit.adjusted.evidence import Evidence
 
 from .dense_reference import Row
 from .measured_networks import Measured, measured

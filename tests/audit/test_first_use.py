@@ -10,8 +10,8 @@ import pytest
 from rich.console import Console
 
 from dec.audit.condition import check
+from dec.audit.given.presets import PRESETS
 from dec.audit.output import result_bytes, vertex_bytes
-from dec.audit.presets import PRESETS
 from dec.audit.questions import balance, loops
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset, Field
@@ -19,7 +19,7 @@ from dec.errors import InputError
 from dec.files import read
 from dec.report.terminal import audit_view, check_view, presets_view
 from dec.report.wording import checked_sentence, verdict_sentence
-from dec.topology import ranks
+from dec.topology import smith
 
 PIPES = pd.DataFrame({"id": ["in", "a", "b"], "from": ["S", "J", "J"], "to": ["J", "T", "U"],
                       "flow": ["5.2", "3.0", "2.1"], "bench": ["x", "x", ""]})  # fmt: skip
@@ -255,10 +255,10 @@ def test_suspects_are_told_as_what_they_are():
 
 def test_holes_that_cannot_be_counted_are_said_not_to_be(monkeypatch):
     for name in ("_STEPS", "_STEPS_EACH"):
-        monkeypatch.setattr(ranks, name, 0)
+        monkeypatch.setattr(smith, name, 0)
     rng = np.random.default_rng(5)
-    cells = np.array([rng.permutation(30)[:4] for _ in range(100)])
-    found = check(Complex.from_cells({"tetra": cells}, points=rng.random((30, 3)))).to_dict()
+    cells = np.array([rng.permutation(45)[:4] for _ in range(250)])
+    found = check(Complex.from_cells({"tetra": cells}, points=rng.random((45, 3)))).to_dict()
     assert found["betti"] is None
     assert any("cannot be counted" in note for note in found["notes"])
     assert "holes not counted" in shown(check_view(found))

@@ -4,9 +4,9 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from dec.audit.hints import UNIT_FACTORS, hint_for
 from dec.audit.questions import balance, loops
-from dec.audit.single_errors import CRITICAL
+from dec.audit.tested.hints import UNIT_FACTORS, hint_for
+from dec.audit.tested.single_errors import CRITICAL
 from dec.calculus.dataset import Dataset
 
 UNITS = [(unit, way) for unit in UNIT_FACTORS for way in (1, -1)]

@@ -6,8 +6,8 @@ from itertools import combinations
 import numpy as np
 import pytest
 
-import dec.audit.laplacian
-from dec.audit.laplacian import BLOCK, Laplacian
+import dec.audit.adjusted.laplacian
+from dec.audit.adjusted.laplacian import BLOCK, Laplacian
 from dec.errors import AccuracyError
 from dec.solvers.choice import Choice
 from dec.solvers.elimination import Elimination
@@ -109,7 +109,7 @@ def test_what_does_not_come_out_right_is_refused_and_not_given(monkeypatch):
     laplacian = Laplacian(tail, head, 4, np.array([1e10, 1e10, 1.0, 1e-3]), ground=3)
     missed = np.array([1.0, 0.0, 0.0, 0.0])
     assert laplacian.change(missed)[0] == pytest.approx([1, 1, 2e-10, 1], rel=1e-9)
-    monkeypatch.setattr(dec.audit.laplacian, "_TURNS", 1)
+    monkeypatch.setattr(dec.audit.adjusted.laplacian, "_TURNS", 1)
     with pytest.raises(AccuracyError, match=r"the law is met to .* only; raise the smallest"):
         laplacian.change(missed)
 
@@ -128,8 +128,9 @@ def on_both_engines(monkeypatch, tail, head, n, conductance) -> tuple[Laplacian,
     """The same Laplacian with an exact factor, and as one that is too large for it."""
     exact = Laplacian(tail, head, n, conductance, ground=0)
     engine = choice_of(Elimination())
-    monkeypatch.setattr(dec.audit.laplacian, "choose", lambda _: engine)
-    monkeypatch.setattr(dec.audit.laplacian, "sparse_order", lambda *_: None)
+    monkeypatch.setattr(dec.audit.adjusted.laplacian, "choose", lambda _: engine)
+    monkeypatch.setattr(dec.audit.adjusted.laplacian, "sparse_order", lambda *_: None)
+    monkeypatch.setattr(dec.audit.adjusted.laplacian, "_SMALL", 0)
     return exact, Laplacian(tail, head, n, conductance, ground=0)
 
 

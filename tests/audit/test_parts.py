@@ -6,6 +6,7 @@ import pytest
 
 from dec.audit.questions import balance, loops
 from dec.calculus.dataset import Dataset
+from dec.report.suspicion import part_sentences
 
 from .small_networks import Case, difference_case, flow_case
 
@@ -75,3 +76,34 @@ def test_parts_that_share_an_error_are_not_judged_apart():
     rows = [("A", "B", 1.0, "crew"), ("B", "A", -1.1, "crew"), ("C", "D", 1.0, "crew"), ("D", "C", -1.2, "")]
     net = Dataset.from_frames(pd.DataFrame(rows, columns=["from", "to", "y", "who"]))
     assert loops(net, "y", sd=0.1, common="who", common_sd=0.1).extra["parts"] is None
+
+
+@pytest.mark.parametrize("sd", ["sd", "10%"])
+def test_an_edge_without_reading_and_sd_leaves_the_verdict_of_its_part(sd: str):
+    """By hand: a misses b by 0.2 with variances of 0.01 each, so chi-square 2; an empty cell has no sd at all."""
+    rows = [("A", "B", "1.0", "0.1"), ("B", "A", "-1.2", "0.1"), ("A", "B", "", ""), ("C", "D", "1", "0.1")]
+    net = Dataset.from_frames(pd.DataFrame(rows, columns=["from", "to", "y", "sd"]))
+    part = loops(net, "y", sd=sd).extra["parts"][0]
+    variance = 0.02 if sd == "sd" else 0.1**2 + 0.12**2
+    assert (part["part"], part["dof"], part["holds"]) == ("A", 1, True)
+    assert part["chi_square"] == pytest.approx(0.2**2 / variance)
+    flows = balance(net, "y", sd=sd, open=["C", "D"]).extra["parts"]
+    assert all(np.isfinite(row["chi_square"]) for row in flows)
+
+
+def test_a_part_is_said_in_numbers_that_fit():
+    rows = [("A", "B", 1.0), ("B", "A", -1.0), ("C", "C", 0.0)]
+    net = Dataset.from_frames(pd.DataFrame(rows, columns=["from", "to", "y"]))
+    said = part_sentences(loops(net, "y", sd=0.1).to_dict())
+    assert [line.partition(":")[0] for line in said] == ["A and 1 more", "C"]
+    assert all(line.endswith(", 1 check") for line in said)
+
+
+def test_readings_of_one_edge_check_each_other_in_the_part_where_they_lie():
+    """By hand: 1.0 and 1.4 on a line, sd 0.1, are 0.2 from their mean: 2 * 0.04 / 0.01 = 8; the mean fits its loop."""
+    lines = pd.DataFrame({"id": list("abcd"), "from": list("PQXY"), "to": list("QPYX")})
+    table = pd.DataFrame({"edge": list("aabcd"), "y": [1.0, 1.4, -1.2, 3.0, -3.1]})
+    audit = loops(Dataset.from_frames(lines), "y", sd=0.1, readings=table)
+    found = {row["part"]: (row["dof"], round(row["chi_square"], 9)) for row in audit.extra["parts"]}
+    assert found == {"P": (2, 8.0), "X": (1, 0.5)}
+    assert (audit.dof, audit.chi_square) == (3, pytest.approx(8.5))

@@ -8,9 +8,9 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from dec.audit.presets import PRESETS, kilometres, loop_limits, meter_class, meter_sd, preset, vertex_limits
-from dec.audit.readings import read_readings
-from dec.audit.repeats import combined_readings
+from dec.audit.given.presets import PRESETS, kilometres, loop_limits, meter_class, meter_sd, preset, vertex_limits
+from dec.audit.given.readings import read_readings
+from dec.audit.given.repeats import combined_readings
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError
 

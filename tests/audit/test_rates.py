@@ -16,7 +16,7 @@ from scipy.stats import binom, chi2
 
 from dec.audit.questions import balance, loops
 from dec.audit.record import Audit
-from dec.audit.single_errors import CRITICAL
+from dec.audit.tested.single_errors import CRITICAL
 from dec.calculus.columns import Column
 from dec.calculus.dataset import Dataset
 

@@ -7,7 +7,7 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from dec.audit.readings import known_at_vertices, named_vertices, read_readings
+from dec.audit.given.readings import known_at_vertices, named_vertices, read_readings
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError

@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from dec.audit.readings import Known, known_at_vertices, with_storage
+from dec.audit.given.readings import Known, known_at_vertices, with_storage
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError

@@ -9,8 +9,8 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from dec.audit.readings import Readings, read_readings
-from dec.audit.repeats import applied_notes, combined_readings
+from dec.audit.given.readings import Readings, read_readings
+from dec.audit.given.repeats import applied_notes, combined_readings
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
 from dec.errors import InputError

@@ -7,9 +7,9 @@ import pandas as pd
 import pytest
 from scipy.optimize import linprog
 
-from dec.audit import testing
 from dec.audit.questions import balance, loops
 from dec.audit.record import Audit
+from dec.audit.tested import testing
 from dec.calculus.dataset import Dataset
 
 from .measured_networks import Measured, measured

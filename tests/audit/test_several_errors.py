@@ -6,11 +6,11 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from dec.audit.evidence import Evidence
+from dec.audit.adjusted.evidence import Evidence
 from dec.audit.questions import balance, loops
 from dec.audit.record import Audit
-from dec.audit.several_errors import several_errors
-from dec.audit.single_errors import CRITICAL, single_errors
+from dec.audit.tested.several_errors import several_errors
+from dec.audit.tested.single_errors import CRITICAL, single_errors
 from dec.calculus.dataset import Dataset
 
 from .dense_reference import is_parallel
@@ -237,7 +237,7 @@ def test_an_error_that_two_others_together_explain_is_dropped():
     evidence = Evidence(
         9, score, np.diag(dense), lambda k: dense[:, k], lambda h: dense @ h, np.ones(9, dtype=bool), np.ones(9)
     )
-    single = single_errors(evidence, evidence.rough)
+    single = single_errors(evidence)
     assert np.argmax(single.statistic) % 3 == 2
     found = several_errors(evidence, single, float(misses @ misses), 9, 0.05, CRITICAL)
     assert sorted(found.error.tolist()) == [0, 1, 3, 4, 6, 7]

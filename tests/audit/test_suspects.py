@@ -6,7 +6,7 @@ import pytest
 from scipy.stats import norm
 
 from dec.audit.questions import balance, loops
-from dec.audit.single_errors import CRITICAL, DETECTABLE
+from dec.audit.tested.single_errors import CRITICAL, DETECTABLE
 from dec.calculus.dataset import Dataset
 
 

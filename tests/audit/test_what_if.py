@@ -209,3 +209,16 @@ def test_what_cannot_be_asked_is_refused(asked: dict, says: str):
 def test_a_plain_text_is_one_id_and_not_a_row_of_letters():
     audit = balance(pipe("5", "5"), "y", sd=0.1, open=["S", "T"])
     assert (audit.dof, audit.what_if(left_out="out").dof) == (1, 0)
+
+
+def test_ids_and_readings_that_can_be_read_once_only_serve_a_what_if_too(tmp_path):
+    """Ids from an iterator; a table of readings that is gone by the time of the question, as a pipe is."""
+    lines = pd.DataFrame({"id": ["a", "b"], "from": ["S", "J"], "to": ["J", "T"]})
+    table = tmp_path / "readings.csv"
+    table.write_text("edge,y\na,5\nb,4.9\n")
+    audit = balance(Dataset.from_frames(lines), "y", 0.1, open=iter(["S", "T"]), readings=table)
+    table.unlink()
+    would = audit.what_if(turned=["a"])
+    assert (would.dof, would.chi_square) == (audit.dof, pytest.approx(9.9**2 / 0.02))
+    assert would.asked["open"] == ["S", "T"]
+    assert would.what_if().chi_square == audit.chi_square

@@ -404,7 +404,6 @@ def test_results_never_replace_their_own_input_not_even_with_force(run, junction
         ("balance", "none.csv", "--value", "f", "--limit", "much"),
         ("balance", "none.csv", "--value", "f", "--limit", "1%"),
         ("loops", "none.vtu", "--field", "u", "--alpha", "0.05"),
-        ("check", "none.csv", "--force"),
     ],
 )
 def test_words_that_would_be_ignored_or_misread_are_wrong_use(run, words):

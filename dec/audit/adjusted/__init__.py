@@ -1,0 +1,1 @@
+"""What least squares makes of it, by either law."""

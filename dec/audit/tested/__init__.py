@@ -1,0 +1,1 @@
+"""What the readings say against each other: errors alone and together."""
