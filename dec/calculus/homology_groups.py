@@ -1,7 +1,8 @@
 """Homology of a complex, for reading and for further work: ranks, torsion and closed chains."""
 
-from dataclasses import dataclass
-from functools import cached_property
+from collections.abc import Callable
+from dataclasses import dataclass, field
+from functools import cache, cached_property
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -11,7 +12,8 @@ from dec.arrays import BoolArray
 from dec.calculus.chain import LARGEST, Chain
 from dec.errors import TopologyError
 from dec.topology.edges import sealed
-from dec.topology.homology import cycles, homology
+from dec.topology.homology import closed_chains, homology
+from dec.topology.reductions import Rows
 
 if TYPE_CHECKING:
     from dec.calculus.cells import Cells
@@ -33,6 +35,8 @@ class HomologyGroup:
         How many closed chains are independent: the Betti number.
     torsion : tuple of int
         Orders above 1, each a divisor of the next, of closed chains that become a boundary when taken that often.
+    closed : function
+        Makes the closed chains of any degree, once for all degrees.
 
     Examples
     --------
@@ -49,6 +53,7 @@ class HomologyGroup:
     relative: bool
     rank: int
     torsion: tuple[int, ...]
+    closed: Callable[[], Callable[[int], Rows]] = field(repr=False)
 
     @cached_property
     def cycles(self) -> csr_array:
@@ -72,7 +77,7 @@ class HomologyGroup:
         The chains are not the shortest of their class.
         """
         inside = _inside(self.complex) if self.relative else None
-        rows = cycles(_matrices(self.complex, inside), self.degree)
+        rows = self.closed()(self.degree)
         if max(map(abs, rows.values.tolist()), default=0) >= LARGEST:
             message = f"a closed chain of degree {self.degree} has a coefficient of 2**53 or more; the rank is right"
             raise TopologyError(message)
@@ -127,9 +132,10 @@ def all_groups(complex: "Cells", *, relative: bool) -> tuple[HomologyGroup, ...]
     TopologyError
         If the cells are so entangled that the elimination would not end in reasonable time.
     """
-    found = homology(_matrices(complex, _inside(complex) if relative else None))
+    matrices = _matrices(complex, _inside(complex) if relative else None)
+    found, closed = homology(matrices), cache(lambda: closed_chains(matrices))
     return tuple(
-        HomologyGroup(complex, degree, relative, rank, torsion)
+        HomologyGroup(complex, degree, relative, rank, torsion, closed)
         for degree, (rank, torsion) in enumerate(zip(found.ranks, found.torsion, strict=True))
     )
 

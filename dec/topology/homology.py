@@ -1,5 +1,6 @@
 """Homology over the whole numbers: ranks, torsion, and closed chains that nothing bounds."""
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -9,7 +10,7 @@ from dec.arrays import BoolArray
 from dec.topology.reductions import LARGEST, Layer, Rows, follow, pair_off
 from dec.topology.smith import Columns, Splitting, Vector, invariant_factors, split
 
-__all__ = ["Homology", "cycles", "homology"]
+__all__ = ["Homology", "closed_chains", "cycles", "homology"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -83,10 +84,34 @@ def cycles(coboundaries: tuple[csr_array, ...], degree: int) -> Rows:
     >>> cycles((K.coboundary(0),), 1).values
     array([1, 1, 1])
     """
+    return closed_chains(coboundaries)(degree)
+
+
+def closed_chains(coboundaries: tuple[csr_array, ...]) -> Callable[[int], Rows]:
+    """`cycles` of any degree, the cells paired and eliminated once for all of them.
+
+    Parameters
+    ----------
+    coboundaries : tuple of csr_array of int8
+        As for `homology`.
+
+    Returns
+    -------
+    function of a degree
+
+    Raises
+    ------
+    TopologyError
+        As `dec.topology.smith.split`.
+    """
     layers = pair_off(coboundaries)
-    chains = list(_split(layers, with_chains=True).left[degree].values())
-    rows = _rows(chains)
-    return _sorted(follow(layers[degree - 1], rows)[0] if degree else rows)
+    left = _split(layers, with_chains=True).left
+
+    def of(degree: int) -> Rows:
+        rows = _rows(list(left[degree].values()))
+        return _sorted(follow(layers[degree - 1], rows)[0] if degree else rows)
+
+    return of
 
 
 def _split(layers: list[Layer], *, with_chains: bool) -> Splitting:
