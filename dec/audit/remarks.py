@@ -114,6 +114,8 @@ def general_notes(network: Complex, model: Model, adjustment: Adjustment, tests:
         notes.append(f"standard deviations of inferred values are left out: more than {MOST_INFERRED_WORK:,} steps")
     if model.readings.sd is not None and not tests.is_all:
         notes += _left_out_notes(tests, adjustment.evidence, balance=adjustment.potential is None)
+    elif model.readings.sd is not None and adjustment.redundancy is None:
+        notes.append("redundancies are left out: an exact factor would fill; the single tests are exact")
     for word, of_one, of_many in (
         ("unchecked", "measured, but nothing can contradict it", "measured, but nothing can contradict them"),
         ("unknown", "not measured, and its value does not follow from the others",

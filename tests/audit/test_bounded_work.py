@@ -141,3 +141,24 @@ def test_of_the_loudest_alone_nothing_is_said_of_chance_and_the_sizes_say_of_how
     loud |= {*whole.vertices["class"][whole.vertices["fault_statistic"] > chance["limit"]]}
     assert chance["exceed"] == len(loud)
     assert any("10% of what a redundancy lacks to 1" in note for note in whole.notes)
+
+
+def test_of_a_large_class_the_first_are_named_and_the_others_counted(monkeypatch):
+    """Lines in a row to a held mark: every loop has all of them."""
+    monkeypatch.setattr("dec.audit.tested.suspects._MOST_NAMED", 4)
+    ends = [(str(k), str(k + 1)) for k in range(10)]
+    frame = pd.DataFrame({"from": [a for a, _ in ends], "to": [b for _, b in ends], "y": ["1.0"] * 9 + ["2.5"]})
+    (suspect,) = loops(Dataset.from_frames(frame), "y", sd=0.05, fixed={"0": 0, "10": 10}).suspects
+    assert len(suspect.inseparable_from) == 4
+    assert suspect.hint.endswith("7 more are of its class in the tables")
+
+
+def test_exact_single_tests_without_redundancies_say_so(monkeypatch):
+    net, fixed = held_grid(4, 6)
+    monkeypatch.setattr("dec.solvers.choice.SMALL", 1)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian.sparse_order", lambda *_: None)
+    monkeypatch.setattr("dec.audit.adjusted.laplacian._SMALL", 0)
+    audit = loops(net, "y", sd=0.01, fixed={v: h for v, h in fixed.items() if v in (0, 8)})
+    assert np.isnan(audit.edges["redundancy"]).all()
+    assert np.isfinite(audit.edges["statistic"]).all()
+    assert any(note.startswith("redundancies are left out") for note in audit.notes)

@@ -109,15 +109,16 @@ def _suspect(
     rank = {i: 2 if (h := hints[i]) is None or h.factor is None else int(h.factor != -1.0) for i in together}
     lead = min(together, key=lambda i: (rank[i], i))
     error = int(single.error[lead])
-    rest = sorted({int(single.error[k]), *others.tolist()} - {error})[:_MOST_NAMED]
+    rest = sorted({int(single.error[k]), *others.tolist()} - {error})
+    more = f"; {len(rest) - _MOST_NAMED:,} more are of its class in the tables" if len(rest) > _MOST_NAMED else ""
     kind, name = naming(error)
     statistic, hint = float(single.statistic[lead]), hints[lead]
     is_reading = error < len(model.tail)
     return Suspect(
         kind, name, statistic,
         float(model.readings.value[error] - single.estimate[lead]) if is_reading else float(single.estimate[lead]),
-        tuple(naming(e) for e in rest),
-        _place_hint(single, lead, naming.at_vertex) if hint is None else hint.text,
+        tuple(naming(e) for e in rest[:_MOST_NAMED]),
+        (_place_hint(single, lead, naming.at_vertex) if hint is None else hint.text) + more,
         float(single.weight[lead] ** -0.5),
         _outcomes(single, lead, model, adjustment, hint, alpha, in_proportion),
     )  # fmt: skip
