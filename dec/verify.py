@@ -27,6 +27,7 @@ SCHEMA = "dec.certificate/1"
 _NUMBER = re.compile(r"[+-]?([0-9]+(\.[0-9]*)?|\.[0-9]+)([eE][+-]?[0-9]+)?")
 _UNIT = re.compile(r"1|0\.0*1")
 _MOST_PLACES, _MOST_SHOWN, _ROUND_UP = 400, 20, 64
+_MOST_CELLS = 1_000_000
 _MALFORMED = (KeyError, TypeError, ValueError, IndexError, AttributeError, ArithmeticError, RecursionError)
 
 
@@ -296,7 +297,10 @@ def _exactly(text: str, decimal: str, places: int, where: Callable[[], str]) -> 
 def _places(unit: str) -> int:
     if _UNIT.fullmatch(unit) is None:
         _unfit(f"the unit must be a power of ten up to 1, found {unit!r}")
-    return len(unit) - 2 if "." in unit else 0
+    places = len(unit) - 2 if "." in unit else 0
+    if places > _MOST_PLACES:
+        _unfit(f"the unit must have at most {_MOST_PLACES} decimal places, found {places}")
+    return places
 
 
 def _whole(value: object) -> int:
@@ -361,7 +365,8 @@ def _compare_vertices(stated: Sequence[str], nodes: Table, report: Report) -> No
 
 def _check_audit_tables(entries: Mapping[str, Any], tables: Mapping[str, Table], report: Report) -> None:
     _check_names(entries)
-    places, decimal, columns = _places(entries["unit"]), entries["decimal"], entries["columns"]
+    places, decimal, columns = _places(entries["unit"]), _decimal_sign(entries), entries["columns"]
+    _check_question(entries)
     edges = tables.get("edges")
     if edges is not None:
         column = None if columns["value"] is None else edges.column(columns["value"])
@@ -376,7 +381,8 @@ def _check_audit_tables(entries: Mapping[str, Any], tables: Mapping[str, Table],
                 said = "nothing" if edge[3] is None else f"{edge[3]} x {entries['unit']}"
                 what = f"{edges.place(row)}: {columns['value']} is {text!r}"
                 report.problems.append(f"{what}, the certificate has {said}")
-        report.checked.append(f"{edges.name}: {rows} edges read again, number by number")
+        which = "" if column is None else f", column {columns['value']}"
+        report.checked.append(f"{edges.name}{which}: {rows} edges read again, number by number")
         if column is None:
             report.not_shown.append("that the values are those of a table of readings: they stand in the certificate")
     at_nodes = [name for name in ("supply", "storage", "fixed") if columns.get(name) is not None]
@@ -386,6 +392,28 @@ def _check_audit_tables(entries: Mapping[str, Any], tables: Mapping[str, Table],
             _check_nodes(entries, tables["nodes"], at_nodes, report)
     if edges is not None and not at_nodes and (entries["supply"] or entries["fixed"]):
         report.not_shown.append("that the numbers at vertices are those of a table: they were given by id")
+
+
+def _decimal_sign(entries: Mapping[str, Any]) -> str:
+    sign = entries["decimal"]
+    if sign not in {".", ","}:
+        _unfit(f'the decimal sign must be "." or ",", found {sign!r:.20}')
+    return str(sign)
+
+
+def _check_question(entries: Mapping[str, Any]) -> None:
+    """Refuse numbers at vertices that the law does not know, and columns of a node table that is no input."""
+    columns, of_balance = entries["columns"], ("supply", "storage")
+    foreign = ("fixed",) if entries["law"] == "balance" else of_balance
+    if any(columns.get(name) is not None for name in foreign) or entries["fixed" if "fixed" in foreign else "supply"]:
+        _unfit(f"the law {entries['law']} has no {' or '.join(foreign)}, and the certificate has some")
+    named = [name for name in (*of_balance, "fixed") if columns.get(name) is not None]
+    _needs_nodes(entries, named)
+
+
+def _needs_nodes(entries: Mapping[str, Any], named: Sequence[str]) -> None:
+    if named and entries["inputs"] and all(given["holds"] != "nodes" for given in entries["inputs"]):
+        _unfit(f"columns of a node table are named ({', '.join(named)}), and no node table is among the inputs")
 
 
 def _one(text: str, decimal: str, places: int, table: Table, row: int, report: Report) -> int | None:
@@ -451,6 +479,10 @@ _OUTSIDE: None = None  # no name is None
 def _check_balance(entries: Mapping[str, Any], tables: Mapping[str, Table], report: Report) -> None:
     _check_audit_tables(entries, tables, report)
     joins, supply = _Joins(), _unique(entries["supply"], "supply")
+    if entries["open"]:
+        count, few = len(entries["open"]), ", ".join(str(name) for name in entries["open"][:4])
+        vertices = "vertex is" if count == 1 else "vertices are"
+        report.not_shown.append(f"that {count} {vertices} open to the outside ({few}{', ...' if count > 4 else ''})")
     for name in entries["open"]:
         joins.join(_OUTSIDE, name)
     for _, start, end, number in entries["edges"]:
@@ -519,7 +551,11 @@ def _check_verdict(sums: Iterable[int], checks: int, entries: Mapping[str, Any],
     holds = all(abs(amount) * scale <= limit for amount in sums) if checks else None
     if holds is not entries["holds"]:
         report.problems.append(f"the verdict must be {holds}, the certificate has {entries['holds']}")
-    report.checked.append({True: "the law holds", False: "the law does not hold", None: "nothing to check"}[holds])
+    name = str(entries.get("unit_name") or "")
+    within = f"every sum within {entries['limit']:.40} {name:.40}".rstrip()
+    report.checked.append({
+        True: f"the law holds, {within}", False: f"the law does not hold: not {within}", None: "nothing to check",
+    }[holds])  # fmt: skip
 
 
 # ---- solves: residual and bound in exact arithmetic
@@ -539,6 +575,8 @@ def _check_solve(entries: Mapping[str, Any], tables: Mapping[str, Table], report
     for name, height in held.items():
         if potential[name] != height:
             report.problems.append(f"vertex {name!r} is held at {float(height)}, its potential is another")
+    if _rational(entries["residual"]) < 0 or _rational(entries["bound"]) < 0:
+        _unfit("the residual and the bound must not be negative")
     edges = [(start, end, _rational(flow), _rational(c)) for _, start, end, flow, c in entries["edges"]]
     if any(c <= 0 for *_, c in edges):
         _unfit("every conductance must be positive")
@@ -641,7 +679,8 @@ def _raised(terms: Iterable[Fraction]) -> Fraction:
 
 def _check_solve_tables(entries: Mapping[str, Any], tables: Mapping[str, Table], report: Report) -> None:
     _check_names(entries)
-    columns, sign = entries["columns"], entries["decimal"]
+    columns, sign = entries["columns"], _decimal_sign(entries)
+    _needs_nodes(entries, [name for name in ("source", "fixed") if columns.get(name) is not None])
     edges, nodes = tables.get("edges"), tables.get("nodes")
     if edges is not None:
         cells = None if columns["conductance"] is None else edges.column(columns["conductance"])
@@ -651,6 +690,8 @@ def _check_solve_tables(entries: Mapping[str, Any], tables: Mapping[str, Table],
                 report.problems.append(f"{edges.place(row)}: conductance {found}, the certificate has {edge[4]}")
         report.checked.append(f"{edges.name}: {len(edges.lines)} edges read again")
     if nodes is None:
+        if entries["inputs"]:
+            report.not_shown.append("that sources and held potentials are those of a table")
         return
     _compare_vertices([name for name, _ in entries["vertices"]], nodes, report)
     source, held = dict(entries["supply"]), dict(entries["fixed"])
@@ -677,6 +718,10 @@ def _nearest(text: str, sign: str, table: Table, row: int, report: Report) -> fl
 
 def _check_homology(entries: Mapping[str, Any], _: Mapping[str, Table], report: Report) -> None:
     counts = [_whole(n) for n in entries["counts"]]
+    if min(counts, default=0) < 0 or sum(counts) > _MOST_CELLS:
+        _unfit(f"there must be 0 to {_MOST_CELLS:,} cells, found {counts!s:.60}")
+    for given in entries["inputs"]:
+        report.not_shown.append(f"that the boundaries are those of {given['name']}: its SHA-256 alone was compared")
     matrices = [[_chain(column, counts[k]) for column in columns] for k, columns in enumerate(entries["boundaries"])]
     if len(matrices) != len(counts) - 1 or any(len(m) != n for m, n in zip(matrices, counts[1:], strict=True)):
         _unfit("there must be one boundary matrix for each degree from 1, with one column a cell")
@@ -697,9 +742,10 @@ def _check_degree(
     """Recheck one degree, from its boundary matrix and the next one, and from their invariant factors."""
     rank = n - len(factors[0]) - len(factors[1])
     torsion = _invariants(factor for factor in factors[1] if factor > 1)
-    if _whole(stated["rank"]) != rank or _invariants(map(_whole, stated["torsion"])) != torsion:
+    if _whole(stated["rank"]) != rank or [_whole(order) for order in stated["torsion"]] != torsion:
         found = f"rank {rank} and torsion {torsion}"
-        report.problems.append(f"degree {k} has {found}; the certificate has {stated['rank']} and {stated['torsion']}")
+        said = f"{stated['rank']!s:.40} and {stated['torsion']!s:.80}"
+        report.problems.append(f"degree {k} has {found}; the certificate has {said}")
     cycles = [_chain(cycle, n) for cycle in stated["cycles"]]
     for number, cycle in enumerate(cycles, start=1):
         if _boundary(cycle, matrices[0]):
@@ -844,13 +890,20 @@ def gathered(certificate: Path, files: Sequence[Path]) -> tuple[bytes, dict[str,
     found = {file.name: _bytes(file) for file in files}
     for name in names:
         beside = certificate.parent / name
-        if name not in found and name == Path(name).name and beside.is_file():
+        if name not in found and name == Path(name).name and _is_file(beside):
             found[name] = _bytes(beside)
     unknown = [name for name in found if name not in names]
     if unknown:
         message = f"{unknown[0]} is none of the files that the certificate names: {', '.join(names) or 'none at all'}"
         raise Unusable(message)
     return data, found
+
+
+def _is_file(path: Path) -> bool:
+    try:
+        return path.is_file()
+    except (OSError, ValueError):  # a name that no file can have
+        return False
 
 
 def _bytes(path: Path) -> bytes:

@@ -94,8 +94,9 @@ def check_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
 
 def verify_view(result: Mapping[str, Any]) -> Iterator[RenderableType]:
     """A recheck for reading: whether everything fits, what was looked at, and what a recheck cannot show."""
-    word = "HOLDS" if result["holds"] else "DOES NOT HOLD"
-    yield Text(f"certificate of law {visible(result['law'])}  ").append(word, _STYLE[result["holds"]])
+    word = "VERIFIES" if result["holds"] else "DOES NOT VERIFY"
+    law = f" ({visible(result['law'])})" if result["law"] else ""
+    yield Text(f"certificate{law}  ").append(word, _STYLE[result["holds"]])
     yield from _remarks("problem", result["problems"])
     yield from _remarks("checked", result["checked"])
     yield from _remarks("not shown", result["not_shown"])

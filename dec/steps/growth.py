@@ -7,7 +7,7 @@ import numpy as np
 
 from dec.arrays import AnyArray, FloatArray
 from dec.errors import InputError
-from dec.steps.kinds import fitted, is_exact, numbers, plain, positive_step
+from dec.steps.kinds import MOST_FACTORS, fitted, is_exact, numbers, plain, positive_step
 
 __all__ = ["cosine", "growth", "sine"]
 
@@ -147,6 +147,9 @@ def _whole_steps(places: AnyArray, step: Any) -> AnyArray:
         number = Fraction(place) / Fraction(step)
         if number.denominator != 1:
             message = f"x must be a whole number of steps {step} to stay exact, got {place}; give floats for the rest"
+            raise InputError(message)
+        if abs(number.numerator) > MOST_FACTORS:
+            message = f"x must be at most {MOST_FACTORS:,} steps to stay exact, got {number.numerator}; give floats"
             raise InputError(message)
         steps[at] = number.numerator
     return steps.reshape(places.shape)

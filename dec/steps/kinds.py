@@ -10,13 +10,14 @@ from dec.calculus.columns import Column, Decimals
 from dec.errors import InputError
 
 __all__ = [
-    "LARGEST_INT", "Number", "count_of", "fitted", "fractions_of", "is_exact", "largest", "numbers", "plain",
-    "positive_step", "refuse_few", "series", "series_with_gaps", "shown",
+    "LARGEST_INT", "MOST_FACTORS", "Number", "count_of", "fitted", "fractions_of", "is_exact", "largest", "numbers",
+    "plain", "positive_step", "refuse_few", "series", "series_with_gaps", "shown",
 ]  # fmt: skip
 
 Number: TypeAlias = int | float | Fraction
 
 LARGEST_INT = 2**63 - 1
+MOST_FACTORS = 100_000  # of one product, or rows beyond a series: more would not end in reasonable time
 
 
 def is_exact(values: AnyArray) -> bool:

@@ -7,7 +7,7 @@ import numpy as np
 
 from dec.arrays import AnyArray
 from dec.errors import InputError
-from dec.steps.kinds import LARGEST_INT, is_exact, largest, numbers, plain, positive_step
+from dec.steps.kinds import LARGEST_INT, MOST_FACTORS, is_exact, largest, numbers, plain, positive_step
 
 __all__ = ["falling_power"]
 
@@ -48,6 +48,9 @@ def falling_power(x: Any, m: int, h: Any = 1) -> Any:
     """
     if isinstance(m, bool) or not isinstance(m, int | np.integer):
         message = f"m must be a whole number, got {m!r:.60}"
+        raise InputError(message)
+    if abs(m) > MOST_FACTORS:
+        message = f"m must be at most {MOST_FACTORS:,}, got {m}; so many factors would take too long"
         raise InputError(message)
     single = isinstance(x, str) or np.ndim(x) == 0
     array = np.asarray(plain(x, "x")) if single else numbers(x, "x")

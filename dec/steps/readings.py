@@ -9,7 +9,7 @@ import numpy as np
 
 from dec.arrays import AnyArray, BoolArray, IntArray, frozen
 from dec.errors import InputError
-from dec.steps.kinds import count_of, fitted, fractions_of, is_exact, series_with_gaps
+from dec.steps.kinds import MOST_FACTORS, count_of, fitted, fractions_of, is_exact, series_with_gaps
 
 __all__ = ["Filled", "extend", "fill"]
 
@@ -136,6 +136,10 @@ def extend(readings: Any, after: int = 0, before: int = 0, order: int = 3, large
         message = f"readings must have no gap to be carried on, got one at {at[0] if len(at) == 1 else tuple(at)}; "
         message += "fill it first with steps.fill"
         raise InputError(message)
+    for name, rows in (("before", before), ("after", after)):
+        if count_of(rows, name) > MOST_FACTORS:
+            message = f"{name} must be at most {MOST_FACTORS:,} rows, got {rows}; no series is known so far on"
+            raise InputError(message)
     pads = [(count_of(before, "before"), count_of(after, "after")), *[(0, 0)] * (values.ndim - 1)]
     return _completed(np.pad(values, pads), np.pad(present, pads), order, largest)
 
