@@ -249,7 +249,7 @@ def test_storage_counts_with_the_other_sign() -> None:
     [
         ("0", "must be positive, got 0"),
         ("-0.1", "must be positive"),
-        ("nothing", "no column 'nothing' among the edges"),
+        ("nothing", "digits must be a positive decimal, as 0.1, or an edge column"),
         (None, "a positive number or the name of an edge column, got None"),
         ("unit", "column unit must state a unit on an edge of every component"),
         ("1e-40", "at most 30 places"),

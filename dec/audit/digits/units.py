@@ -113,7 +113,12 @@ def read_units(data: Dataset, unit: object) -> Units:
     if reads_as_number(text):
         integers, places = _integers(Column("digits", np.array([text], dtype=object), "--digits"))
         return Units(label, (integers[0],) * count, (places[0],) * count)
-    column = data.column(text.removeprefix("col:"), 1)
+    heading = text.removeprefix("col:")
+    if heading == text and heading not in data.columns.get(1, {}):
+        columns = ", ".join(data.columns.get(1, {})) or "none"
+        message = f"digits must be a positive decimal, as 0.1, or an edge column ({columns}), got {text!r:.60}"
+        raise InputError(message)
+    column = data.column(heading, 1)
     integers, places = _integers(column)
     chosen: list[Fraction | None] = [None] * count
     finest = [0] * count
