@@ -15,7 +15,7 @@ from dec.files.lines import TextLines, whole_numbers
 from dec.files.msh_fields import fields_of
 from dec.files.msh_sections import MshFile
 from dec.files.parts import KINDS, Group, MeshParts, kind_named, ragged_of
-from dec.files.sources import Source, printable
+from dec.files.sources import Source, printable, whole_count
 from dec.topology.polygons import Ragged
 
 __all__ = ["read_msh"]
@@ -27,7 +27,7 @@ _ELEMENTS = {
     9: "triangle6", 10: "quad9", 11: "tetra10", 12: "hexahedron27", 15: "vertex", 16: "quad8", 17: "hexahedron20",
     18: "wedge15", 19: "pyramid13",
 }  # fmt: skip
-_NAME = re.compile(r'^\s*(\d)\s+(-?\d+)\s+"(.*)"\s*$')
+_NAME = re.compile(r'^\s*(\d)\s+(-?\d{1,18})\s+"(.*)"\s*$')
 
 
 @dataclass(frozen=True, slots=True)
@@ -110,7 +110,7 @@ def _count_line(name: str, body: bytes, line: int) -> tuple[int, bytes]:
     if not head.strip().isdigit():
         message = f"{name} line {line}: a count must stand here, found {head[:40].decode('latin-1')!r}"
         raise InputError(message)
-    return int(head), rest
+    return whole_count(head.strip().decode("ascii"), f"{name} line {line}"), rest
 
 
 def _refuse_count(name: str, what: str, promised: int, found: int) -> None:

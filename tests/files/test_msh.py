@@ -272,3 +272,10 @@ def test_a_number_that_must_be_whole_is_not_cut_to_one(nodes: str, element: str)
     )
     with pytest.raises(InputError, match="must be a whole number"):
         read_msh(Source("part.msh", text.encode()))
+
+
+def test_a_count_of_five_thousand_digits_is_one_clear_error(tmp_path):
+    path = tmp_path / "m.msh"
+    path.write_bytes(text_22().replace(b"$Nodes\n4\n", b"$Nodes\n" + b"9" * 5000 + b"\n"))
+    with pytest.raises(InputError, match="digits"):
+        read(path)
