@@ -185,6 +185,9 @@ def _refuse_on_network(options: argparse.Namespace, law: str) -> None:
     if getattr(options, "round_supplies", False) and options.digits is None:
         message = "--round-supplies belongs to --digits; give the unit to round to"
         raise UsageError(message)
+    if options.digits is not None and _is_number(options.digits) and float(options.digits) <= 0:
+        message = f"--digits must be a positive decimal, as 0.1, or an edge column, got {options.digits}"
+        raise UsageError(message)
     _refuse_clash(options, law)
 
 
