@@ -13,7 +13,7 @@ from dec.audit.adjusted.adjustment import Adjustment
 from dec.audit.adjusted.closures import closures
 from dec.audit.adjusted.differences import adjust_differences
 from dec.audit.adjusted.flows import adjust_flows, group_residuals
-from dec.audit.given.asked import Asked, unfit_preset
+from dec.audit.given.asked import Asked
 from dec.audit.given.common_errors import CommonErrors, common_errors
 from dec.audit.given.model import Model, model_of
 from dec.audit.given.presets import Preset
@@ -51,7 +51,7 @@ from dec.audit.verdict import Limits, Verdict, judged, read_limits
 from dec.audit.vertex_rows import group_names, vertex_rows
 from dec.calculus.complex import Complex
 from dec.calculus.dataset import Dataset
-from dec.errors import AccuracyError, InputError
+from dec.errors import AccuracyError
 
 __all__ = ["audit_differences", "audit_flows"]
 
@@ -73,6 +73,7 @@ class _Found:
     as_read: Readings
     model: Model
     adjustment: Adjustment
+    rule: Preset | None
     limits: Limits
     verdict: Verdict
     tests: Tested
@@ -82,7 +83,6 @@ def audit_flows(net: Dataset, asked: Asked, as_read: Readings | None = None) -> 
     """Whether flows balance at every closed vertex; see `dec.balance`. Readings once read need no reading again."""
     network = net.complex
     limits, rule = read_limits(asked.alpha, asked.limit, asked.sd), chosen_rule(asked)
-    _refuse_rule(rule, "balance")
     as_read = as_read or _as_read(net, asked, rule)
     readings = _supposed(net, asked.what_if, as_read)
     opened = named_vertices(net, asked.open, "open")
@@ -110,7 +110,7 @@ def audit_flows(net: Dataset, asked: Asked, as_read: Readings | None = None) -> 
     rows["group"] = joint_names(network, group)
     notes = [*shared, *notes, *self_loop_notes(network, balance=True)]
     said = {"open": vertex_names(network, opened).tolist(), "supply": _said(asked.supply), **said}
-    found = _Found(network, as_read, model, contradictable(adjustment, readings), limits, verdict, tests)
+    found = _Found(network, as_read, model, contradictable(adjustment, readings), rule, limits, verdict, tests)
     return _record("balance", net, found, rows, (), notes, asked, said)
 
 
@@ -118,7 +118,6 @@ def audit_differences(net: Dataset, asked: Asked, as_read: Readings | None = Non
     """Whether differences close round every loop; see `dec.loops`. Readings once read need no reading again."""
     network, n = net.complex, net.complex.counts[0]
     limits, rule = read_limits(asked.alpha, asked.limit, asked.sd), chosen_rule(asked)
-    _refuse_rule(rule, "loop")
     as_read = as_read or _as_read(net, asked, rule)
     readings = _supposed(net, asked.what_if, as_read)
     known = None if asked.fixed is None else known_at_vertices(net, asked.fixed, "fixed", asked.fixed_sd)
@@ -159,14 +158,8 @@ def audit_differences(net: Dataset, asked: Asked, as_read: Readings | None = Non
         "fixed": vertex_names(network, np.flatnonzero(held)).tolist(),
         "fixed_sd": None if known is None else known.sd_said,
     }
-    found_all = _Found(network, as_read, model, contradictable(adjustment, readings), limits, verdict, tests)
+    found_all = _Found(network, as_read, model, contradictable(adjustment, readings), rule, limits, verdict, tests)
     return _record("loop", net, found_all, rows, loops, notes, asked, said)
-
-
-def _refuse_rule(rule: Preset | None, law: str) -> None:
-    message = None if rule is None else unfit_preset(rule.name, rule.sets, law)
-    if message is not None:
-        raise InputError(message)
 
 
 def _as_read(net: Dataset, asked: Asked, rule: Preset | None) -> Readings:
@@ -281,7 +274,7 @@ def _record(
         "sidak": bool(asked.sidak), "robust": bool(asked.robust), "figures": asked.figures,
         "what_if": asked.what_if.to_dict(),
     }  # fmt: skip
-    rule = chosen_rule(asked)
+    rule = found.rule
     extra: dict[str, Any] = {
         "closes_to": adjustment.closes_to, "errors": tests.several, "chance": tests.chance, "robust": tests.robust,
         "parts": part_rows(network, model, adjustment, found.limits.alpha, balance=balance),

@@ -151,6 +151,13 @@ class Audit:
             raise InputError(message)
         return self.again(WhatIf.of(turned, scaled, left_out))
 
+    def summary(self) -> dict[str, Any]:
+        """The verdict with its figures, and the first three suspects, as plain Python objects."""
+        return {
+            "holds": self.holds, "dof": self.dof, "chi_square": plain(self.chi_square), "limit": plain(self.limit),
+            "p_value": plain(self.p_value), "suspects": self.to_dict(rows=0)["suspects"][:3],
+        }  # fmt: skip
+
     def certify(self, *, contents: Sequence[bytes] = ()) -> bytes:
         """The certificate of a network audit as the bytes of a file, for ``dec verify``.
 

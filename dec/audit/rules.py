@@ -54,16 +54,10 @@ def meter_accuracy(asked: Asked, rule: Preset | None) -> object:
     Raises
     ------
     InputError
-        If the transitional flow is missing or no number, or the audit asks for what the rule does not set.
+        If the transitional flow is no number.
     """
     if rule is None or rule.sets != "reading sd":
-        if asked.transition is not None:
-            message = "transition belongs to presets of meter classes; leave it out"
-            raise InputError(message)
         return asked.sd
-    if asked.transition is None:
-        message = f"preset {rule.name} needs the transitional flow of the meters; give transition"
-        raise InputError(message)
     if not isinstance(asked.transition, str):
         return meter_class(rule, asked.transition)
     border, plus, floor = asked.transition.rpartition("+")
@@ -78,16 +72,10 @@ def line_lengths(net: Dataset, asked: Asked, rule: Preset | None, readings: Read
     Raises
     ------
     InputError
-        If lengths or their unit, or the unit of the differences, are missing.
+        If a length that is needed is missing or cannot be meant.
     """
-    if rule is None or rule.sets != "loop limit":
-        if asked.length is not None or asked.length_unit is not None:
-            message = "length belongs to presets of levelling loops; leave it out"
-            raise InputError(message)
+    if asked.length is None or rule is None or rule.sets != "loop limit":
         return None
-    if asked.length is None:
-        message = f"preset {rule.name} needs the lengths of the lines; give length and length_unit"
-        raise InputError(message)
     return kilometres(net, asked.length, asked.length_unit, readings.measured)
 
 
@@ -103,14 +91,11 @@ def loop_allowances(
     """
     if rule is None or lengths is None:
         return None
-    legs = lengths
     tail, head = found.group[model.tail], found.group[model.head]
 
     def allowed(chords: IntArray) -> FloatArray:
         walks = fundamental_loops(tail, head, found.forest, chords)
-        levelled = walks.edges < model.n_edges  # a reading at a vertex has no length
-        ends = np.concatenate([[0], np.cumsum(levelled)])[walks.offsets]
-        return loop_limits(rule, legs[walks.edges[levelled]], ends, unit=asked.unit, heading=asked.value)
+        return loop_limits(rule, lengths[walks.edges], walks.offsets, unit=asked.unit, heading=asked.value)
 
     return _in_chunks(found.chords, allowed)
 

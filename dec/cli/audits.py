@@ -82,10 +82,7 @@ def _what_if(options: argparse.Namespace, audit: "Audit") -> dict[str, Any] | No
     if not (turned or left_out or scaled):
         return None
     would = audit.what_if(turned, scaled, left_out)
-    first = would.to_dict(rows=0)["suspects"][:3]
-    question = would.asked["what_if"]
-    return {**question, "holds": would.holds, "dof": would.dof, "chi_square": would.chi_square, "limit": would.limit,
-            "p_value": would.p_value, "suspects": first}  # fmt: skip
+    return {**would.asked["what_if"], **would.summary()}
 
 
 def _conclude(options: argparse.Namespace, audit: "Audit") -> int:

@@ -4,7 +4,7 @@ import argparse
 from pathlib import Path
 
 from dec.cli.codes import FINDING, OK
-from dec.cli.paths import contents_of, outputs_of, read_data
+from dec.cli.paths import contents_of, read_data
 from dec.cli.speaking import patience, show, write
 from dec.errors import InputError
 
@@ -49,7 +49,6 @@ def solve_verb(options: argparse.Namespace) -> int:
     from dec.solvers.certificate import solve_certificate
     from dec.solvers.network import solve_network
 
-    outputs_of(options)
     with patience("solving", options):
         data = read_data(options)
         solution = solve_network(

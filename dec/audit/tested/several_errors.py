@@ -152,14 +152,13 @@ class _Search:
         factor = cho_factor((inner + inner.T) / 2)
         return cho_solve(factor, self.score[taken]), cho_solve(factor, np.eye(len(taken))), columns
 
-    def best(self, taken: list[int] | None = None) -> tuple[int, float]:
+    def best(self) -> tuple[int, float]:
         """The loudest error beside those taken, and its statistic; -1 where none is left."""
-        taken = self.taken if taken is None else taken
-        estimate, covariance, columns = self.fitted(taken)
+        estimate, covariance, columns = self.fitted(self.taken)
         score = self.score - columns @ estimate
         weight = self.single.weight - ((columns @ covariance) * columns).sum(axis=1)
         free = weight > _LEFT * self.single.weight
-        free[taken] = False
+        free[self.taken] = False
         if not free.any():
             return -1, 0.0
         statistic = np.where(free, np.abs(score) / np.sqrt(np.where(free, weight, 1.0)), 0.0)
