@@ -4,6 +4,7 @@ import numpy as np
 
 from dec.arrays import IntArray
 from dec.topology.compiled import compiled
+from dec.topology.graphs import adjacency
 
 __all__ = ["cut_classes"]
 
@@ -46,10 +47,7 @@ def cut_classes(tail: IntArray, head: IntArray, n_vertices: int) -> IntArray:
     array([ 0,  0,  0,  3,  3, -1])
     """
     tail, head = np.asarray(tail, np.int64), np.asarray(head, np.int64)
-    ends = np.stack([tail, head], axis=1).ravel()
-    edge_at = np.argsort(ends, kind="stable")
-    edge_at >>= 1
-    start = np.concatenate([[0], np.cumsum(np.bincount(ends, minlength=n_vertices))]).astype(np.int64)
+    start, edge_at = adjacency(tail, head, n_vertices)
     order, parent, via = depth_first(tail, head, start, edge_at)
     covers, deepest = covering(tail, head, start, edge_at, order, parent, via)
     return _lowest_of_equals(covers, deepest)
@@ -57,7 +55,7 @@ def cut_classes(tail: IntArray, head: IntArray, n_vertices: int) -> IntArray:
 
 def _lowest_of_equals(covers: IntArray, deepest: IntArray) -> IntArray:
     """Return the lowest edge with the same two figures; -1 where nothing covers the edge."""
-    figures = deepest * (int(covers.max(initial=0)) + 1) + covers  # below n1^2, so int64 holds it
+    figures = deepest * (int(covers.max(initial=0)) + 1) + covers  # below n1 (n1 + 1), so int64 holds it
     _, first, member = np.unique(figures, return_index=True, return_inverse=True)
     return np.where(covers > 0, first[member], -1)
 

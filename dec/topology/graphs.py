@@ -13,7 +13,7 @@ from dec.topology import searches
 from dec.topology.polygons import Walks
 
 __all__ = [
-    "Forest", "bridges", "components", "fundamental_loops", "joined", "spanning_forest", "tree_flows",
+    "Forest", "adjacency", "bridges", "components", "fundamental_loops", "joined", "spanning_forest", "tree_flows",
     "tree_potentials",
 ]  # fmt: skip
 
@@ -123,7 +123,7 @@ def spanning_forest(
     >>> spanning_forest(np.array([0, 1, 0]), np.array([1, 2, 2]), 3).via
     array([-1,  0,  2])
     """
-    start, edge_at = _adjacency(tail, head, n_vertices)
+    start, edge_at = adjacency(tail, head, n_vertices)
     first = np.empty(0, np.int64) if roots is None else np.asarray(roots, np.int64)
     allowed = np.ones(len(tail), dtype=bool) if usable is None else usable
     return Forest(*searches.breadth_first(*_ends(tail, head), start, edge_at, first, allowed))
@@ -151,7 +151,7 @@ def bridges(tail: IntArray, head: IntArray, n_vertices: int) -> BoolArray:
     >>> bridges(np.array([0, 0, 1]), np.array([1, 1, 2]), 3)
     array([False, False,  True])
     """
-    start, edge_at = _adjacency(tail, head, n_vertices)
+    start, edge_at = adjacency(tail, head, n_vertices)
     return searches.low_links(*_ends(tail, head), start, edge_at)
 
 
@@ -250,8 +250,14 @@ def _ends(tail: IntArray, head: IntArray) -> tuple[IntArray, IntArray]:
     return np.asarray(tail, np.int64), np.asarray(head, np.int64)
 
 
-def _adjacency(tail: IntArray, head: IntArray, n_vertices: int) -> tuple[IntArray, IntArray]:
-    """Return the edges at each vertex, ascending, as offsets and a flat array; a self-loop stands twice."""
+def adjacency(tail: IntArray, head: IntArray, n_vertices: int) -> tuple[IntArray, IntArray]:
+    """The edges at each vertex, ascending, as offsets (n0 + 1,) and a flat array (2 n1,); a self-loop stands twice.
+
+    Examples
+    --------
+    >>> adjacency(np.array([0, 1]), np.array([1, 2]), 3)
+    (array([0, 1, 3, 4]), array([0, 0, 1, 1]))
+    """
     ends = np.stack([tail, head], axis=1).ravel()
     edge_at = np.argsort(ends, kind="stable")
     edge_at >>= 1
